@@ -104,8 +104,8 @@ class Graph:
         simple = _SIMPLE.get(type(e))
         if simple is not None:
             return self._node(simple, at)
-        rewritten = _rewritten(e)
-        if rewritten is not None:
+        other = rewritten(e)
+        if other is not None:
             return at[0]
         name, orders, _ = _call(e)
         return self._node("call", at, (name, orders))
@@ -120,7 +120,7 @@ _SIMPLE = {
 }
 
 
-def _rewritten(e: Expr) -> Expr | None:
+def rewritten(e: Expr) -> Expr | None:
     """``e`` through the few operations a graph knows, or None if it stays."""
     if e is sp.E:
         return sp.exp(sp.S.One, evaluate=False)
@@ -177,9 +177,9 @@ def _parts(e: Expr) -> tuple[Expr, ...]:
         return (e.args[0], *(f for _, f in factors(e.args[0])))
     if type(e) in _SIMPLE:
         return tuple(e.args)
-    rewritten = _rewritten(e)
-    if rewritten is not None:
-        return (rewritten,)
+    other = rewritten(e)
+    if other is not None:
+        return (other,)
     return _call(e)[2]
 
 

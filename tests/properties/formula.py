@@ -166,6 +166,9 @@ def _call(name: str, arguments: list[Any]) -> Any:
     if name in ("cot", "sec", "csc"):
         upper = x.cos() if name == "cot" else flint.acb(1)
         return upper / (x.cos() if name == "sec" else x.sin())
+    if name in ("asin", "acos"):
+        turned = -flint.acb(0, 1) * (flint.acb(0, 1) * x + (1 - x * x).sqrt()).log()
+        return turned if name == "asin" else flint.acb.pi() / 2 - turned
     if name == "asinh":
         return (x + (x * x + 1).sqrt()).log()
     if name == "acosh":

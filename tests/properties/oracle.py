@@ -91,7 +91,7 @@ def _bounds(domain: Any) -> tuple[float, float]:
 
 def _number(text: str) -> float:
     value = evaluate(parse(text, []), {}, {})
-    return float(value.p / value.q) if isinstance(value, flint.fmpq) else float(value[0].real)
+    return int(value.p) / int(value.q) if isinstance(value, flint.fmpq) else float(value.real)
 
 
 def _rational(rng: random.Random, low: float, high: float) -> flint.fmpq:

@@ -1,0 +1,136 @@
+"""What runs in a worker: read a problem, or solve one and tell of every stage.
+
+Tasks come in on a pipe as messages ``read`` and ``solve``, each with the problem as its part.
+Out goes ``accepted``, then for a solve one ``stage`` at the beginning of each stage with what
+was found so far, and last one of
+
+    read        ``id``; part: the problem as read
+    solved      parts: the solution, once a notation set
+    refused     the members of ``hjsolve.errors.InputError``
+    failed      ``problem`` (out-of-memory, out-of-time, answer-too-large, fault), ``detail``
+
+``retire`` in the last one asks for no more tasks: memory ran out, or much of it was used.
+"""
+
+from __future__ import annotations
+
+import json
+import socket
+import sys
+import traceback
+from collections.abc import Callable
+from typing import Any
+
+from api.jobs.messages import SIZE_LIMIT, Message, pack, receive
+from api.jobs.processes import limit_cpu, limit_process, peak_memory_bytes
+from hjsolve import __version__
+from hjsolve.errors import InputError, OutOfTime
+from hjsolve.reading import read_problem
+from hjsolve.records import Hamiltonian, Solution
+from hjsolve.solve import solve
+from hjsolve.writing import content_id, problem_document, solution_document
+
+#: Time on the processor beyond the deadline after which the kernel ends a worker.
+CPU_MARGIN_SECONDS = 10.0
+
+#: Made beforehand: when memory has run out there may be none to make a message with.
+OUT_OF_MEMORY = pack({"kind": "failed", "problem": "out-of-memory", "retire": True})
+
+Send = Callable[[bytes], None]
+Render = Callable[[Hamiltonian, Solution], tuple[bytes, ...]]
+
+
+def serve(connection: socket.socket, memory_bytes: int) -> None:
+    """Do tasks from ``connection`` until it is closed or one asks this process to retire."""
+    limit_process(memory_bytes)
+    stream = connection.makefile("rb")
+    try:
+        while task := receive(stream):
+            connection.sendall(pack({"kind": "accepted"}))
+            last = perform(task, connection.sendall, render_documents)
+            if peak_memory_bytes() > memory_bytes // 2:
+                last["retire"] = True
+            connection.sendall(pack(last, *last.pop("parts", ())))
+    except MemoryError:
+        connection.sendall(OUT_OF_MEMORY)
+    except ConnectionError:
+        pass  # the service is gone, and nobody is left to tell
+
+
+def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
+    """Do one task; the header of the last message, its parts under ``parts``.
+
+    Raises:
+        MemoryError: the limit was reached; the process should take no more tasks, since a
+            library that ran out of memory half-way is in no known state.
+    """
+    try:
+        hamiltonian = read_problem(json.loads(task.parts[0]))
+        if task.kind == "read":
+            document = _json_text(problem_document(hamiltonian))
+            name = content_id(hamiltonian, __version__)
+            return {"kind": "read", "id": name, "parts": (document,)}
+        limit_cpu(float(task.header["seconds"]) + CPU_MARGIN_SECONDS)
+        return _solve(hamiltonian, send, render)
+    except InputError as error:
+        return {
+            "kind": "refused",
+            "detail": error.detail,
+            "pointer": error.pointer,
+            "position": error.position,
+            "expected": error.expected,
+            "code": error.code,
+        }
+    except OutOfTime as error:
+        return {"kind": "failed", "problem": "out-of-time", "detail": str(error)}
+    except MemoryError:
+        raise
+    except Exception as error:
+        traceback.print_exc(file=sys.stderr)
+        detail = f"{type(error).__name__}: {error}"[:500]
+        return {"kind": "failed", "problem": "fault", "detail": detail}
+
+
+def _solve(hamiltonian: Hamiltonian, send: Send, render: Render) -> dict[str, Any]:
+    def on_stage(stage: str, found: Solution | None) -> None:
+        parts = () if found is None else render(hamiltonian, found)
+        if sum(map(len, parts)) > SIZE_LIMIT:
+            parts = ()
+        send(pack({"kind": "stage", "stage": stage}, *parts))
+
+    parts = render(hamiltonian, solve(hamiltonian, on_stage))
+    size = sum(map(len, parts))
+    if size > SIZE_LIMIT:
+        detail = f"the answer takes {size} bytes; at most {SIZE_LIMIT} are sent"
+        return {"kind": "failed", "problem": "answer-too-large", "detail": detail}
+    return {"kind": "solved", "parts": parts}
+
+
+def render_documents(hamiltonian: Hamiltonian, solution: Solution) -> tuple[bytes, bytes]:
+    """The answer as JSON text, without and with MathML; the problem stands first."""
+    full = {
+        "problem": problem_document(hamiltonian),
+        **solution_document(solution, notations=("infix", "latex", "mathml")),
+    }
+    return _json_text(without_mathml(full)), _json_text(full)
+
+
+def without_mathml(value: Any) -> Any:
+    """A copy without the ``mathml`` of its formulas.
+
+    A formula is told by its ``infix`` text: a coordinate may be named ``mathml`` too.
+    """
+    if isinstance(value, dict):
+        formula = isinstance(value.get("infix"), str)
+        return {
+            key: without_mathml(each)
+            for key, each in value.items()
+            if not (formula and key == "mathml")
+        }
+    if isinstance(value, (list, tuple)):
+        return [without_mathml(each) for each in value]
+    return value
+
+
+def _json_text(document: dict[str, Any]) -> bytes:
+    return json.dumps(document, allow_nan=False).encode()

@@ -1,0 +1,241 @@
+"""One equation K(q, p) = ε in one coordinate, solved for its momentum.
+
+The forms, in the order tried: p enters to the first or second degree; p stands
+in one place and every function around it has an inverse; K is a polynomial in
+p of higher degree after its radicals are cleared.  What is left has no formula
+here and is said to have none.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any
+
+import sympy as sp
+from sympy import Add, Expr, Mul, Pow, Rational, Symbol
+
+from hjsolve.algebra.generators import Generators, NotRational, Ratio, coefficients
+from hjsolve.records import Definition, SeparatedEquation
+
+
+@dataclass(frozen=True, slots=True)
+class Solved:
+    """p = drift + sign·root; ``squared`` is p² when drift is 0."""
+
+    drift: Expr
+    root: Expr
+    squared: Expr | None
+    where: tuple[Definition, ...] = ()
+
+
+def equation(
+    coordinate: Symbol, momentum: Symbol, sign: Symbol, solved: Solved
+) -> SeparatedEquation:
+    """The record of a solved equation."""
+    return SeparatedEquation(
+        coordinate, momentum, sign, solved.drift, solved.root, solved.squared, solved.where
+    )
+
+
+def solve_for(k: Expr, value: Expr, p: Symbol) -> Solved | None:
+    """p from k = value, or None."""
+    return _by_degree(k, value, p) or _isolated(k, value, p) or _cleared(k, value, p)
+
+
+def linear(value: Expr) -> Solved:
+    """A momentum with one branch."""
+    return Solved(value, sp.S.Zero, value**2 if value.is_zero else None)
+
+
+def quadratic(a: Expr, b: Expr, c: Expr) -> Solved:
+    """The two roots of a p² + b p + c = 0."""
+    if b.is_zero:
+        squared = _spread(-c, a)
+        return Solved(sp.S.Zero, sp.sqrt(squared), squared)
+    half = _spread(-b, 2 * a)
+    return Solved(half, sp.sqrt(half**2 + _spread(-c, a)), None)
+
+
+def _spread(above: Expr, below: Expr) -> Expr:
+    """above/below, term by term, so that 2m(E − V) reads as the literature has it."""
+    inverse = 1 / below
+    if isinstance(above, Add) and not isinstance(inverse, Add):
+        return Add(*(inverse * term for term in above.args))
+    return above * inverse
+
+
+def _by_degree(k: Expr, value: Expr, p: Symbol) -> Solved | None:
+    if not k.is_polynomial(p):
+        return None
+    second = sp.diff(k, p, 2)
+    if second.has(p):
+        second = sp.expand(second)
+        if second.has(p):
+            return None
+    first = sp.diff(k, p).subs(p, 0)
+    rest = k.subs(p, 0) - value
+    if second == 0:
+        return None if first == 0 else linear(_spread(-rest, first))
+    return quadratic(sp.together(second / 2), first, rest)
+
+
+# ---------------------------------------------------- p in one place only
+
+
+def _isolated(k: Expr, value: Expr, p: Symbol) -> Solved | None:
+    """Undo, from outside in, the functions around the only occurrence of p."""
+    if k.count(p) != 1:
+        return None
+    signed = False
+    while k != p:
+        step = _undo(k, value, p)
+        if step is None:
+            return None
+        k, value, two_valued = step
+        if two_valued and k != p:
+            return None
+        signed = signed or two_valued
+    if signed:
+        return Solved(sp.S.Zero, value, sp.expand(value**2) if _is_root(value) else None)
+    return linear(value)
+
+
+def _is_root(value: Expr) -> bool:
+    return isinstance(value, Pow) and value.exp == Rational(1, 2)
+
+
+def _undo(k: Expr, value: Expr, p: Symbol) -> tuple[Expr, Expr, bool] | None:
+    """(inner, its value, whether the inner value has both signs) for k = value."""
+    if isinstance(k, Add):
+        rest, inner = k.as_independent(p, as_Add=True)
+        return inner, value - rest, False
+    if isinstance(k, Mul):
+        factor, inner = k.as_independent(p, as_Add=False)
+        return inner, _spread(value, factor), False
+    if isinstance(k, Pow) and isinstance(k.exp, Rational):
+        return k.base, inverse_power(value, k.exp), k.exp.p % 2 == 0
+    if isinstance(k, sp.Function) and len(k.args) == 1:
+        for kind, inverse, both in _INVERSES:
+            if isinstance(k, kind):
+                return k.args[0], inverse(value), both
+    return None
+
+
+def inverse_power(value: Expr, exponent: Rational) -> Expr:
+    """The real x with x**exponent = value; the one that is not negative when there are two."""
+    if exponent.p % 2 and exponent.q % 2 and exponent.p != 1 and not value.is_nonnegative:
+        return sp.sign(value) * sp.Abs(value) ** (1 / exponent)
+    return value ** (1 / exponent)
+
+
+_INVERSES = (
+    (sp.exp, sp.log, False),
+    (sp.log, sp.exp, False),
+    (sp.sinh, sp.asinh, False),
+    (sp.tanh, sp.atanh, False),
+    (sp.asinh, sp.sinh, False),
+    (sp.atanh, sp.tanh, False),
+    (sp.atan, sp.tan, False),
+    (sp.cosh, sp.acosh, True),
+    (sp.cos, sp.acos, True),
+    (sp.Abs, lambda v: v, True),
+)
+
+
+# ------------------------------------------------ polynomials in p, or e^p
+
+
+def _cleared(k: Expr, value: Expr, p: Symbol) -> Solved | None:
+    """Through a polynomial in p with its radicals cleared, or in exp(p)."""
+    try:
+        ring = Generators([k, value], extra=(p,))
+        difference = ring.ratio(k) - ring.ratio(value)
+        polynomial = clear_radicals(ring, difference.numerator, lambda g: g.has(p))
+    except (NotRational, ArithmeticError):
+        return None
+    carriers = [g for g in ring.items if g.has(p)]
+    used = [g for g in carriers if polynomial.degrees()[ring.index[g]] > 0]
+    if len(used) != 1:
+        return None
+    parts = {
+        e: ring.polynomial(c)
+        for e, c in coefficients(polynomial, ring.index[used[0]], ring.context).items()
+    }
+    if used[0] == p:
+        return from_coefficients(parts, p)
+    if isinstance(used[0], sp.exp):
+        return _from_exponential(parts, used[0].args[0] / p)
+    return None
+
+
+def clear_radicals(ring: Generators, polynomial: Any, unwanted: Callable[[Expr], bool]) -> Any:
+    """Multiply by conjugates until no unwanted square root is left.
+
+    Raises NotRational for roots of higher degree.
+    """
+    for k, degree, power in reversed(ring.relations):
+        g = ring.items[k]
+        if not isinstance(g, Pow) or not unwanted(g):
+            continue
+        reduced = ring.reduce(Ratio(polynomial, ring.context.constant(1))).numerator
+        if reduced.degrees()[k] == 0:
+            polynomial = reduced
+            continue
+        if degree != 2:
+            raise NotRational("a root of higher degree holds a momentum")
+        parts = coefficients(reduced, k, ring.context)
+        zero = ring.context.constant(0)
+        a, b = parts.get(0, zero), parts.get(1, zero)
+        one = ring.context.constant(1)
+        product = Ratio(a * a, one) - Ratio(b * b, one) * power
+        polynomial = product.numerator
+    return polynomial
+
+
+def from_coefficients(parts: dict[int, Expr], p: Symbol) -> Solved | None:
+    """p from Σ parts[k] p^k = 0."""
+    degree = max(parts)
+    get = lambda k: parts.get(k, sp.S.Zero)  # noqa: E731 - a local shorthand
+    if degree == 1:
+        return linear(_spread(-get(0), get(1)))
+    if degree == 2:
+        return quadratic(get(2), get(1), get(0))
+    if set(parts) <= {0, degree}:
+        value = _spread(-get(0), get(degree))
+        if degree % 2 == 0:
+            return Solved(sp.S.Zero, value ** Rational(1, degree), None)
+        return linear(inverse_power(value, sp.Integer(degree)))
+    if set(parts) <= {0, 2, 4}:
+        middle = _spread(-get(2), 2 * get(4))
+        inner = sp.sqrt(middle**2 + _spread(-get(0), get(4)))
+        outer = 1 if get(4).is_positive else -1
+        squared = middle + outer * inner
+        return Solved(sp.S.Zero, sp.sqrt(squared), squared)
+    return _named_root(parts, p)
+
+
+def _named_root(parts: dict[int, Expr], p: Symbol) -> Solved:
+    """The momentum as a real root of its polynomial, by name."""
+    name = Symbol(f"{p.name}_1", real=True)
+    unknown = Symbol("u", real=True)
+    polynomial = Add(*(c * unknown**k for k, c in parts.items()))
+    where = Definition(name, root_of=polynomial, unknown=unknown, index=max(parts) % 2 + 1)
+    return Solved(name, sp.S.Zero, None, (where,))
+
+
+def _from_exponential(parts: dict[int, Expr], rate: Expr) -> Solved | None:
+    """p from a polynomial in exp(rate·p): first degree, or reciprocal of the second."""
+    low, high = min(parts), max(parts)
+    if rate.free_symbols:
+        return None
+    if set(parts) == {low, high}:
+        value = _spread(-parts[low], parts[high])
+        return linear(sp.log(value) / (rate * (high - low)))
+    middle = (low + high) // 2
+    if set(parts) == {low, middle, high} and low + high == 2 * middle:
+        a, b, c = parts[high], parts[middle], parts[low]
+        if sp.expand(a - c) == 0:  # 2a cosh(rate·p·(high − middle)) + b = 0
+            root = sp.acosh(_spread(-b, 2 * a)) / (rate * (high - middle))
+            return Solved(sp.S.Zero, root, None)
+    return None
