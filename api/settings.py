@@ -64,7 +64,8 @@ def read_settings(environment: Mapping[str, str]) -> Settings:
         ValueError: a variable is no number, too small, or its name is not in the
             table (a misspelt setting must not pass for a set one).
     """
-    known = {field.name: type(field.default) for field in fields(Settings)}
+    usual = Settings()
+    known = {field.name: type(getattr(usual, field.name)) for field in fields(Settings)}
     values: dict[str, float] = {}
     for variable, text in environment.items():
         if not variable.startswith(PREFIX):

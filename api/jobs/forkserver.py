@@ -15,6 +15,7 @@ and, for each worker reaped, ``ended PID STATUS``.
 
 from __future__ import annotations
 
+import contextlib
 import gc
 import importlib
 import os
@@ -56,9 +57,7 @@ def main(control_descriptor: int, parent: int, memory_bytes: int, worker_module:
             return
 
 
-def fork_worker(
-    control: socket.socket, descriptor: int, serve: Serve, memory_bytes: int
-) -> None:
+def fork_worker(control: socket.socket, descriptor: int, serve: Serve, memory_bytes: int) -> None:
     """Fork a worker that serves ``descriptor``, and tell its id there."""
     server = os.getpid()
     process = os.fork()
@@ -81,7 +80,8 @@ def _run_worker(server: int, descriptor: int, serve: Serve, memory_bytes: int) -
         serve(socket.socket(fileno=descriptor), memory_bytes)
         code = 0
     except BaseException:
-        traceback.print_exc(file=sys.stderr)
+        with contextlib.suppress(OSError):  # standard error may be a file, out of bounds here
+            traceback.print_exc(file=sys.stderr)
     finally:
         os._exit(code)
 

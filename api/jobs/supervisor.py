@@ -17,7 +17,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
-from api.jobs.forkserver_orders import FORK, PROCESS_ID, REAP
+from api.jobs.forkserver import FORK, PROCESS_ID, REAP
 from api.jobs.messages import BrokenMessage, Message, pack, receive_async
 from api.jobs.processes import child_environment, module_arguments
 
@@ -47,7 +47,14 @@ class Worker:
 
 
 class Supervisor:
-    """A fork server and ``count`` workers, one of them more than run at the same time."""
+    """A fork server and ``count`` workers forked from it.
+
+    Args:
+        count: workers kept; with one more than tasks that run at the same time, a warm spare
+            takes over at once when one is ended.
+        memory_bytes: address space of each, see ``processes.limit_process``.
+        worker_module: its ``serve(connection, memory_bytes)`` is what a worker runs.
+    """
 
     def __init__(
         self, *, count: int, memory_bytes: int, worker_module: str = "api.jobs.worker"

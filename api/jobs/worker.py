@@ -4,10 +4,11 @@ Tasks come in on a pipe as messages ``read`` and ``solve``, each with the proble
 Out goes ``accepted``, then for a solve one ``stage`` at the beginning of each stage with what
 was found so far, and last one of
 
-    read        ``id``; part: the problem as read
+    read        ``id``; parts: the problem as read, once a notation set
     solved      parts: the solution, once a notation set
     refused     the members of ``hjsolve.errors.InputError``
-    failed      ``problem`` (out-of-memory, out-of-time, answer-too-large, fault), ``detail``
+    failed      ``problem`` (out-of-memory, out-of-time, answer-too-large, refuted, fault),
+                ``detail``, and ``traceback`` of a fault
 
 ``retire`` in the last one asks for no more tasks: memory ran out, or much of it was used.
 """
@@ -16,7 +17,6 @@ from __future__ import annotations
 
 import json
 import socket
-import sys
 import traceback
 from collections.abc import Callable
 from typing import Any
@@ -24,7 +24,7 @@ from typing import Any
 from api.jobs.messages import SIZE_LIMIT, Message, pack, receive
 from api.jobs.processes import limit_cpu, limit_process, peak_memory_bytes
 from hjsolve import __version__
-from hjsolve.errors import InputError, OutOfTime
+from hjsolve.errors import Fault, InputError, OutOfTime
 from hjsolve.reading import read_problem
 from hjsolve.records import Hamiltonian, Solution
 from hjsolve.solve import solve
@@ -35,6 +35,8 @@ CPU_MARGIN_SECONDS = 10.0
 
 #: Made beforehand: when memory has run out there may be none to make a message with.
 OUT_OF_MEMORY = pack({"kind": "failed", "problem": "out-of-memory", "retire": True})
+
+TRACEBACK_CHARACTERS = 5000
 
 Send = Callable[[bytes], None]
 Render = Callable[[Hamiltonian, Solution], tuple[bytes, ...]]
@@ -67,9 +69,9 @@ def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
     try:
         hamiltonian = read_problem(json.loads(task.parts[0]))
         if task.kind == "read":
-            document = _json_text(problem_document(hamiltonian))
-            name = content_id(hamiltonian, __version__)
-            return {"kind": "read", "id": name, "parts": (document,)}
+            document = {"problem": problem_document(hamiltonian)}
+            parts = (_json_text(without_mathml(document)), _json_text(document))
+            return {"kind": "read", "id": content_id(hamiltonian, __version__), "parts": parts}
         limit_cpu(float(task.header["seconds"]) + CPU_MARGIN_SECONDS)
         return _solve(hamiltonian, send, render)
     except InputError as error:
@@ -83,12 +85,18 @@ def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
         }
     except OutOfTime as error:
         return {"kind": "failed", "problem": "out-of-time", "detail": str(error)}
+    except Fault as error:
+        return {"kind": "failed", "problem": "refuted", "detail": str(error)}
     except MemoryError:
         raise
     except Exception as error:
-        traceback.print_exc(file=sys.stderr)
-        detail = f"{type(error).__name__}: {error}"[:500]
-        return {"kind": "failed", "problem": "fault", "detail": detail}
+        # Told, not printed: standard error may be a file, and a worker may write none.
+        return {
+            "kind": "failed",
+            "problem": "fault",
+            "detail": f"{type(error).__name__}: {error}"[:500],
+            "traceback": traceback.format_exc()[-TRACEBACK_CHARACTERS:],
+        }
 
 
 def _solve(hamiltonian: Hamiltonian, send: Send, render: Render) -> dict[str, Any]:

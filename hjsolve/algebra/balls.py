@@ -7,7 +7,8 @@ that does not contain 0 is a proof that the expression is not identically 0.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import Any
@@ -75,6 +76,17 @@ def exact(number: Fraction) -> Any:
     return arb(fmpq(number.numerator, number.denominator))
 
 
+@contextmanager
+def precision(bits: int) -> Iterator[None]:
+    """Work at ``bits`` inside the block."""
+    before = ctx.prec
+    ctx.prec = bits
+    try:
+        yield
+    finally:
+        ctx.prec = before
+
+
 class BallWalk:
     """One evaluation of a graph; raises OutsideDomain, Imprecise, NotSupported."""
 
@@ -92,22 +104,18 @@ class BallWalk:
         self.variables = variables or {}
         self.pairs = {(min(a, b), max(a, b)) for a, b in pairs}
 
-    def run(self, bits: int) -> list[BallJet]:
-        """The jets of the graph's roots at ``bits`` of working precision."""
-        before = ctx.prec
-        ctx.prec = bits
+    def run(self) -> list[BallJet]:
+        """The jets of the graph's roots at the working precision."""
+        out: list[BallJet] = []
         try:
-            out: list[BallJet] = []
             for node in self.graph.nodes:
                 jet = self._node(node.op, node.payload, [out[a] for a in node.args])
                 if not jet.value.is_finite():
                     raise Imprecise
                 out.append(jet)
-            return [out[r] for r in self.graph.roots]
         except ZeroDivisionError as error:
             raise OutsideDomain from error
-        finally:
-            ctx.prec = before
+        return [out[r] for r in self.graph.roots]
 
     def _node(self, op: str, payload: Any, children: list[BallJet]) -> BallJet:
         match op:
@@ -195,6 +203,12 @@ class BallWalk:
             case "atan":
                 inverse = 1 / (1 + u * u)
                 return u.atan(), inverse, -2 * u * inverse * inverse
+            case "lambert":
+                f = u.lambertw()
+                if not f.is_finite() or (1 + f).contains(0) or u.contains(0):
+                    raise OutsideDomain
+                first = f / (u * (1 + f))
+                return f, first, -first * first * (f + 2) / (1 + f)
             case "abs" | "sign":
                 if u.contains(0):
                     raise Imprecise

@@ -53,16 +53,12 @@ class Ratio:
         return self + (-other)
 
     def __mul__(self, other: Ratio) -> Ratio:
-        return lowest(
-            self.numerator * other.numerator, self.denominator * other.denominator
-        )
+        return lowest(self.numerator * other.numerator, self.denominator * other.denominator)
 
     def __truediv__(self, other: Ratio) -> Ratio:
         if other.numerator.is_zero():
             raise NotRational("division by zero")
-        return lowest(
-            self.numerator * other.denominator, self.denominator * other.numerator
-        )
+        return lowest(self.numerator * other.denominator, self.denominator * other.numerator)
 
     def is_zero(self) -> bool:
         """Whether the numerator is the zero polynomial."""

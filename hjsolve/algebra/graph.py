@@ -35,7 +35,7 @@ class Node:
     """One operation.
 
     ``op`` is one of ``number pi symbol add mul power exp log sin cos asin atan
-    atan2 abs sign call``.  ``args`` are positions in the graph.  ``payload``:
+    atan2 lambert abs sign call``.  ``args`` are positions in the graph.  ``payload``:
     the number, the symbol, the rational exponent, the rational coefficients of
     the monomials (exp, sin, cos: args are the argument as a whole, then the
     monomials) or of the factors (log: likewise), or (name, derivative orders) of a called function.
@@ -112,6 +112,7 @@ class Graph:
 
 
 _SIMPLE = {
+    sp.LambertW: "lambert",
     sp.asin: "asin",
     sp.atan: "atan",
     sp.atan2: "atan2",
@@ -157,7 +158,7 @@ def rewritten(e: Expr) -> Expr | None:
         case sp.asinh():
             return sp.log(u + sp.sqrt(u**2 + 1))
         case sp.acosh():
-            return sp.log(u + sp.sqrt(u - 1) * sp.sqrt(u + 1))
+            return sp.log(u + sp.sqrt(u**2 - 1))
         case sp.atanh():
             return (sp.log(1 + u) - sp.log(1 - u)) / 2
     return None
@@ -203,9 +204,9 @@ def _call(e: Expr) -> tuple[str, tuple[int, ...], tuple[Expr, ...]]:
 
 def combination(argument: Expr) -> tuple[tuple[Rational, Expr], ...]:
     """``argument`` as a sum of rational multiples of monomials."""
-    if isinstance(argument, (Mul, Pow, Add)) and argument.count_ops() <= EXPAND_LIMIT:
-        if _small_powers(argument):
-            argument = argument.expand(power_base=False, power_exp=False, log=False, basic=False)
+    opens = isinstance(argument, (Mul, Pow, Add)) and argument.count_ops() <= EXPAND_LIMIT
+    if opens and _small_powers(argument):
+        argument = argument.expand(power_base=False, power_exp=False, log=False, basic=False)
     terms = []
     for term in Add.make_args(argument):
         coefficient, monomial = term.as_coeff_Mul(rational=True)

@@ -7,21 +7,34 @@ at a real point.  Neither rests on a simplifier.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
-from sympy import Expr, Symbol
+from sympy import Expr, Pow, Symbol
+from sympy.core.relational import Relational
 
-from hjsolve.algebra.balls import BallWalk, Imprecise, NotSupported, OutsideDomain, Ridges
+from hjsolve.algebra.balls import (
+    BallJet,
+    BallWalk,
+    Imprecise,
+    NotSupported,
+    OutsideDomain,
+    Ridges,
+    precision,
+)
 from hjsolve.algebra.graph import Graph, TooLarge
 from hjsolve.algebra.modular import NoPoints, Walk
+from hjsolve.algebra.roots import unify_roots
 from hjsolve.algebra.sampling import Range, points, stand_ins
 from hjsolve.records import Truth
 
 PRECISIONS = (128, 512, 2048, 8192)
 """Bits tried in turn at one point before the next point is tried."""
+
+SAFE_CHANCE = 1e-20
+"""A modular zero with a larger chance of being accidental is not called proved."""
 
 PRIME = float(2**30)
 """A lower bound on the primes of ``modular``."""
@@ -71,33 +84,47 @@ def vanish(
     ranges: Mapping[Symbol, Range] | None = None,
     functions: Collection[str] = (),
     tries: int = 24,
+    conditions: Sequence[Relational] = (),
+    positive: Collection[Expr] = (),
 ) -> list[Finding]:
     """A Finding for each expression.
 
-    ``ranges`` limits where a symbol lives, ``functions`` names the arbitrary
-    functions.  With two or more independent roots a modular zero is checked
-    once more in balls, because the branches drawn might all differ from the
-    real one.
+    ``ranges`` limits where a symbol lives, ``conditions`` which points count,
+    ``functions`` names the arbitrary functions, ``positive`` holds expressions
+    known to be positive there.  With two or more roots a
+    modular zero is checked once more in balls, because the branches drawn
+    might all differ from the real one.
     """
-    try:
-        graph = Graph(expressions)
-    except (TooLarge, TypeError):
-        return [Finding(Truth.UNDECIDED, "graph too large")] * len(expressions)
-    formal: list[bool] = [False] * len(expressions)
-    count = 0
-    try:
-        values, count = Walk(graph).values()
-        formal = [bool((v == 0).all()) for v in values]
-    except NoPoints:
-        pass
-    bound = chance(graph, 1.0, count) if count else 1.0
     findings = []
-    for expression, zero in zip(expressions, formal, strict=True):
-        if zero and bound < 1e-20:
-            findings.append(Finding(Truth.PROVED, "modular", bound))
-        else:
-            findings.append(refute(expression, ranges or {}, functions, tries))
+    for expression in expressions:
+        finding = _formal(expression)
+        if finding is None and len(_roots(expression)) > 1:
+            finding = _formal(unify_roots(expression, positive))
+        doubtful = finding is None or len(_roots(expression)) > 1
+        if doubtful:
+            seen = refute(expression, ranges or {}, functions, tries, conditions)
+            if finding is None or seen.truth is Truth.REFUTED:
+                finding = seen
+        assert finding is not None
+        findings.append(finding)
     return findings
+
+
+def _formal(expression: Expr) -> Finding | None:
+    """The proof that an expression is zero, or None."""
+    try:
+        graph = Graph([expression])
+        values, count = Walk(graph).values()
+    except (TooLarge, TypeError, NoPoints):
+        return None
+    bound = chance(graph, 1.0, count)
+    if bool((values[0] == 0).all()) and bound < SAFE_CHANCE:
+        return Finding(Truth.PROVED, "modular", bound)
+    return None
+
+
+def _roots(expression: Expr) -> set[Expr]:
+    return {p.base for p in expression.atoms(Pow) if p.exp.is_Rational and p.exp.q % 2 == 0}
 
 
 def refute(
@@ -105,26 +132,41 @@ def refute(
     ranges: Mapping[Symbol, Range],
     functions: Collection[str] = (),
     tries: int = 24,
+    conditions: Sequence[Relational] = (),
 ) -> Finding:
     """Look for a real point at which a ball excludes 0.
 
     REFUTED with the point; UNDECIDED with the largest radius when every ball
     contained 0, without a bound when no point of the domain was found.
     """
-    graph = Graph([expression])
+    try:
+        graph = Graph([expression])
+        sides = Graph([c.rhs - c.lhs for c in conditions])
+    except (TooLarge, TypeError):
+        return Finding(Truth.UNDECIDED, "graph too large")
     stand = stand_ins(graph, functions)
-    symbols = [n.payload for n in graph.nodes if n.op == "symbol"]
+    symbols = {n.payload for g in (graph, sides) for n in g.nodes if n.op == "symbol"}
     largest: float | None = None
-    for point in points(symbols, ranges, tries):
+    for point in points(symbols, ranges, tries if not conditions else 10 * tries):
+        if conditions and not _meets(sides, point):
+            continue
         value = enclose(graph, point, stand)
         if value is None:
             continue
         if not value.contains(0):
             return Finding(Truth.REFUTED, "balls", None, tuple(point.items()), middle(value))
-        if float(value.rad()) < 1e-25:
-            size = float(abs(value).upper())
-            largest = size if largest is None else max(largest, size)
+        size = float(abs(value).upper())
+        largest = size if largest is None else max(largest, size)
     return Finding(Truth.UNDECIDED, "balls", largest)
+
+
+def _meets(sides: Graph, point: Mapping[Symbol, Fraction]) -> bool:
+    """Whether rhs − lhs is positive for every condition (equality does not count)."""
+    try:
+        with precision(128):
+            return all(jet.value > 0 for jet in BallWalk(sides, point, {}).run())
+    except (Imprecise, OutsideDomain, NotSupported):
+        return False
 
 
 def enclose(
@@ -133,8 +175,7 @@ def enclose(
     """The ball of a graph's only root, or None where it has no real value."""
     last = None
     try:
-        for jets in attempts(BallWalk(graph, point, functions)):
-            last = jets[0].value
+        for last in attempts(BallWalk(graph, point, functions), lambda jets: jets[0].value):
             if not last.contains(0):
                 return last
     except NotSupported:
@@ -142,14 +183,18 @@ def enclose(
     return last
 
 
-def attempts(walk: BallWalk) -> Iterator[list[Any]]:
-    """The walk at rising precision, skipping what is too wide; empty outside the domain.
+def attempts(walk: BallWalk, value_of: Callable[[list[BallJet]], Any]) -> Iterator[Any]:
+    """``value_of`` the walk's jets at rising precision; empty outside the domain.
+
+    The value is formed at the precision of the walk: a sum that cancels would
+    lose at the default what the walk has gained.
 
     Raises NotSupported where a function has no ball evaluation.
     """
     for bits in PRECISIONS:
         try:
-            yield walk.run(bits)
+            with precision(bits):
+                yield value_of(walk.run())
         except Imprecise:
             continue
         except OutsideDomain:

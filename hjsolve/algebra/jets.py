@@ -36,7 +36,6 @@ class JetWalk(Walk):
         walked = self._walk(at, size)
         return [walked[r] for r in self.graph.roots], size
 
-
     def _walk(self, values: dict[Symbol, Array], size: int) -> list[Jet]:
         out: list[Jet] = []
         for node in self.graph.nodes:
@@ -113,6 +112,11 @@ class JetWalk(Walk):
             case "atan":
                 inverse = field.inverse((1 + u * u) % p)
                 return inverse, (p - 2 * u * inverse % p * inverse % p) % p
+            case "lambert":  # W e^W = u, so W' = W/(u (1 + W))
+                below = field.inverse((1 + f) % p)
+                first = f * field.inverse(u) % p * below % p
+                second = first * first % p * ((f + 2) % p) % p * below % p
+                return first, (p - second) % p
             case "abs":
                 return self.sign(u), np.zeros_like(u)
             case _:  # sign

@@ -36,6 +36,9 @@ ROOT_LIMIT = 6
 """More independent square roots than this would need too many draws."""
 
 POINTS = 8
+FIELDS = 64
+"""Primes tried: a constant under a root is a square modulo every other prime only."""
+
 DENOMINATOR_LIMIT = 100_000
 EXPONENT_LIMIT = 1 << 40
 
@@ -157,7 +160,7 @@ class Walk:
         if roots > ROOT_LIMIT:
             raise NoPoints
         keep = POINTS if roots == 0 else min(6 * 2**roots, 96)
-        for _ in range(6):
+        for _ in range(FIELDS):
             values = self._draw(max(2 * keep, keep * 2 ** (roots + 1)))
             good = self._good(values)
             if good.size >= keep // 2:
@@ -236,8 +239,10 @@ class Walk:
             case "sign":
                 return self.sign(below[0])
             case "call":
-                return field.hashed(key_of(payload), *below) if below else field.hashed(
-                    key_of(payload), np.zeros(size, dtype=np.int64)
+                return (
+                    field.hashed(key_of(payload), *below)
+                    if below
+                    else field.hashed(key_of(payload), np.zeros(size, dtype=np.int64))
                 )
             case "log":
                 total = np.zeros(size, dtype=np.int64)

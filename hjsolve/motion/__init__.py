@@ -1,0 +1,5 @@
+"""The Jacobi relations ∂S/∂α = β, and q(t), p(t) where they invert."""
+
+from hjsolve.motion.equations import set_in_motion
+
+__all__ = ["set_in_motion"]

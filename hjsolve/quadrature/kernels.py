@@ -9,7 +9,7 @@ into ``valid`` (Bioche's rules, with domains).
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from math import gcd, lcm
 
 import sympy as sp
@@ -28,12 +28,22 @@ HYPERBOLIC = (sp.sinh, sp.cosh, sp.tanh, sp.coth, sp.sech, sp.csch)
 
 
 @dataclass(frozen=True)
+class Partner:
+    """u^power = constant + factor·w² for another function w of q, named ``function``."""
+
+    function: Expr
+    constant: Expr
+    factor: Expr
+    power: int = 2
+
+
+@dataclass(frozen=True)
 class Kernel:
     """u = ``expression`` with values in ``span``.
 
     ``leaf`` rewrites what depends on q, ``slope`` gives dq/du.  ``constants``
-    must be generators of the ring.  ``partner`` (w, a, b) states u² = a + b w²
-    for a function w of q that may give shorter formulas.
+    must be generators of the ring.  ``partner`` is a function of q in which
+    polynomials in u may be shorter.
     """
 
     expression: Expr
@@ -42,7 +52,7 @@ class Kernel:
     slope: Callable[[Signs], Radicals]
     restriction: tuple[Relational, ...] = ()
     constants: tuple[Expr, ...] = ()
-    partner: tuple[Expr, Expr, Expr] | None = field(default=None)
+    partner: Partner | None = None
 
 
 def candidates(integrand: Expr, variable: Symbol, domain: Domain) -> Iterator[Kernel]:
@@ -181,7 +191,8 @@ def _power(q: Symbol, n: int, domain: Domain) -> Kernel:
         return _rational(signs, signs.ring.number(n) * signs.ring.u ** (n - 1))
 
     if n == 1:
-        return Kernel(q, (domain.lower, domain.upper), leaf, slope)
+        lower = S.Zero if q.is_positive and not domain.lower.is_nonnegative else domain.lower
+        return Kernel(q, (lower, domain.upper), leaf, slope)
     limits = () if domain.lower.is_nonnegative or q.is_positive else (Lt(0, q),)
     lower = domain.lower if domain.lower.is_nonnegative else S.Zero
     share = Rational(1, n)
@@ -230,7 +241,7 @@ def _inner_quadratic(q: Symbol, radicand: Expr, a: Expr, b: Expr, domain: Domain
     if a.is_positive and b.is_positive:
         root = sp.sqrt(b)
         span = (root if not isinstance(root, Pow) or root.exp != S.Half else S.Zero, oo)
-    return Kernel(sp.sqrt(radicand), span, leaf, slope, limits, (a, b), (q, b, a))
+    return Kernel(sp.sqrt(radicand), span, leaf, slope, limits, (a, b), Partner(q, b, a))
 
 
 # ----------------------------------------------------------------- circular
@@ -315,8 +326,8 @@ def _circle_kernel(
                 return inverse * minus * s * s
 
     partner = {
-        "cos": (sp.sin(base), S.One, -S.One),
-        "sin": (sp.cos(base), S.One, -S.One),
+        "cos": Partner(sp.sin(base), S.One, -S.One),
+        "sin": Partner(sp.cos(base), S.One, -S.One),
     }.get(name)
     return Kernel(function(base), span, leaf, slope, limits, (rate,), partner)
 
@@ -434,8 +445,8 @@ def _hyperbola_kernel(
     }
     limits = (Lt(0, base),) if name == "cosh" and not positive else ()
     partner = {
-        "sinh": (sp.cosh(base), -S.One, S.One),
-        "cosh": (sp.sinh(base), S.One, S.One),
-        "tanh": (1 / sp.cosh(base), S.One, -S.One),
+        "sinh": Partner(sp.cosh(base), -S.One, S.One),
+        "cosh": Partner(sp.sinh(base), S.One, S.One),
+        "tanh": Partner(1 / sp.cosh(base), S.One, -S.One),
     }[name]
     return Kernel(function(base), spans[name], leaf, slope, limits, (rate,), partner)

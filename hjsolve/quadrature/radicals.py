@@ -14,7 +14,7 @@ from typing import Any
 
 from sympy import Add, Expr, Integer, Mul, Pow, Rational, Symbol, factorint
 
-from hjsolve.quadrature.ratios import GivenUp, Ratio, Ring, factors
+from hjsolve.quadrature.ratios import GivenUp, Key, Ratio, Ring, factors
 from hjsolve.quadrature.signs import Signs
 
 CLASS_LIMIT = 4
@@ -25,11 +25,11 @@ INTEGER_LIMIT = 10**18
 
 
 class Radicals:
-    """Σ Q·√P as a mapping from P (square-free ``fmpz_mpoly``) to Q."""
+    """Σ Q·√P as a mapping from P (square-free, as a ``Key``) to Q."""
 
     __slots__ = ("signs", "terms")
 
-    def __init__(self, signs: Signs, terms: dict[Any, Ratio]) -> None:
+    def __init__(self, signs: Signs, terms: dict[Key, Ratio]) -> None:
         self.signs = signs
         self.terms = {p: q for p, q in terms.items() if q}
         if len(self.terms) > CLASS_LIMIT:
@@ -38,7 +38,7 @@ class Radicals:
     @classmethod
     def rational(cls, signs: Signs, ratio: Ratio) -> Radicals:
         """A fraction without roots."""
-        return cls(signs, {signs.ring.context.constant(1): ratio})
+        return cls(signs, {Key(signs.ring.context.constant(1)): ratio})
 
     def __add__(self, other: Radicals) -> Radicals:
         terms = dict(self.terms)
@@ -48,11 +48,11 @@ class Radicals:
 
     def __mul__(self, other: Radicals) -> Radicals:
         ring = self.signs.ring
-        terms: dict[Any, Ratio] = {}
-        for p1, q1 in self.terms.items():
-            for p2, q2 in other.terms.items():
-                common = p1.gcd(p2)
-                p, q = (p1 / common) * (p2 / common), q1 * q2
+        terms: dict[Key, Ratio] = {}
+        for k1, q1 in self.terms.items():
+            for k2, q2 in other.terms.items():
+                common = k1.poly.gcd(k2.poly)
+                p, q = Key((k1.poly / common) * (k2.poly / common)), q1 * q2
                 if not common.is_one():
                     q = q * ring.polynomial(common) * ring.number(self.signs.of(common))
                 terms[p] = terms[p] + q if p in terms else q
@@ -68,9 +68,9 @@ class Radicals:
         ring = self.signs.ring
         if len(items) == 1:
             p, q = items[0]
-            return Radicals(self.signs, {p: (q * ring.polynomial(p)).inverse()})
+            return Radicals(self.signs, {p: (q * ring.polynomial(p.poly)).inverse()})
         (p1, q1), (p2, q2) = items
-        norm = q1 * q1 * ring.polynomial(p1) - q2 * q2 * ring.polynomial(p2)
+        norm = q1 * q1 * ring.polynomial(p1.poly) - q2 * q2 * ring.polynomial(p2.poly)
         return Radicals(self.signs, {p1: q1 / norm, p2: -q2 / norm})
 
     def power(self, exponent: int) -> Radicals:
@@ -81,8 +81,8 @@ class Radicals:
         if len(base.terms) == 1:
             (p, q), ring = next(iter(base.terms.items())), self.signs.ring
             n = abs(exponent)
-            whole = q**n * ring.polynomial(p) ** (n // 2)
-            return Radicals(self.signs, {p if n % 2 else ring.context.constant(1): whole})
+            whole = q**n * ring.polynomial(p.poly) ** (n // 2)
+            return Radicals(self.signs, {p if n % 2 else Key(ring.context.constant(1)): whole})
         total = Radicals.rational(self.signs, self.signs.ring.one)
         for _ in range(abs(exponent)):
             total = total * base
@@ -93,12 +93,9 @@ class Radicals:
         if not self.terms:
             return self
         items = list(self.terms.items())
-        if len(items) != 1 or not items[0][0].is_constant():
+        if len(items) != 1 or not items[0][0].poly.is_one():
             raise GivenUp("a square root of square roots")
-        p, q = items[0]
-        if not p.is_one():
-            raise GivenUp("a square root of square roots")
-        return square_root(self.signs, q)
+        return square_root(self.signs, items[0][1])
 
 
 def square_root(signs: Signs, ratio: Ratio) -> Radicals:
@@ -117,7 +114,7 @@ def square_root(signs: Signs, ratio: Ratio) -> Radicals:
         if times % 2:
             p = p * factor
         outside = outside * _absolute(signs, factor) ** (-((times + 1) // 2))
-    return Radicals(signs, {p: outside})
+    return Radicals(signs, {Key(p): outside})
 
 
 def _absolute(signs: Signs, factor: Any) -> Ratio:
@@ -140,6 +137,7 @@ class Reader:
 
     ``leaf`` gives the value of what depends on the variable and is not built by
     + · and rational powers (the variable itself, exp, sin, …), or None.
+    ``originals`` keeps the radicands that are square-free as they stand.
     """
 
     def __init__(
@@ -147,6 +145,7 @@ class Reader:
     ) -> None:
         self.variable, self.signs, self.leaf = variable, signs, leaf
         self._known: dict[Expr, Radicals] = {}
+        self.originals: dict[Key, Expr] = {}
 
     def value(self, e: Expr) -> Radicals:
         """``e`` as Σ Q√P; raises GivenUp when it is not of that form."""
@@ -175,5 +174,14 @@ class Reader:
             if isinstance(e.exp, Integer):
                 return self.value(e.base).power(int(e.exp))
             if isinstance(e.exp, Rational) and e.exp.q == 2:
-                return self.value(e.base).root().power(int(e.exp.p))
+                root = self.value(e.base).root()
+                self._remember(e.base, root)
+                return root.power(int(e.exp.p))
         raise GivenUp(f"{type(e).__name__} of {self.variable} does not fit the substitution")
+
+    def _remember(self, radicand: Expr, root: Radicals) -> None:
+        """Keep how the integrand writes a square-free P."""
+        if len(root.terms) == 1 and radicand.has(self.variable):
+            (key, factor), = root.terms.items()
+            if factor == self.signs.ring.one:
+                self.originals.setdefault(key, radicand)

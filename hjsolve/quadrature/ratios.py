@@ -150,8 +150,7 @@ class Ratio:
     def __eq__(self, other: object) -> bool:
         return isinstance(other, Ratio) and self.num == other.num and self.den == other.den
 
-    def __hash__(self) -> int:
-        return hash((self.num, self.den))
+    __hash__ = None  # type: ignore[assignment]
 
     def __bool__(self) -> bool:
         return not self.num.is_zero()
@@ -160,6 +159,22 @@ class Ratio:
     def constant(self) -> bool:
         """Whether u does not occur."""
         return degree(self.num) <= 0 and degree(self.den) <= 0
+
+
+class Key:
+    """A polynomial as a key of a mapping (``fmpz_mpoly`` itself is not hashable)."""
+
+    __slots__ = ("poly", "_hash")
+
+    def __init__(self, poly: Any) -> None:
+        self.poly = poly
+        self._hash = hash(tuple((e, int(c)) for e, c in poly.terms()))
+
+    def __hash__(self) -> int:
+        return self._hash
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, Key) and self.poly == other.poly
 
 
 def degree(poly: Any) -> int:

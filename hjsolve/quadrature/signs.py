@@ -14,7 +14,7 @@ from typing import Any
 from sympy import Expr, oo
 
 from hjsolve.quadrature import univariate
-from hjsolve.quadrature.ratios import GivenUp, Ratio, Ring, degree, factors
+from hjsolve.quadrature.ratios import GivenUp, Key, Ratio, Ring, degree, factors
 
 
 class Undetermined(Exception):
@@ -52,10 +52,11 @@ class Signs:
     ) -> None:
         self.ring, self.kernel, self.span = ring, kernel, span
         self.guess, self.guessed = guess, False
-        self.assumed: dict[Any, int] = {
-            a.poly: a.sign for a in assumed if a.kernel is None or a.kernel == kernel
+        self.assumed: dict[Key, int] = {
+            Key(a.poly): a.sign for a in assumed if a.kernel is None or a.kernel == kernel
         }
-        self._factors: dict[Any, int | None] = {}
+        self._factors: dict[Key, int | None] = {}
+        self._names = [Key(g) for g in ring.context.gens()]
         self._generators = [self._u_sign(), *(_symbol_sign(c) for c in ring.constants)]
 
     def _u_sign(self) -> int:
@@ -76,8 +77,8 @@ class Signs:
                     rest = rest * factor
                 else:
                     known *= s
-        if not rest.is_one() and rest in self.assumed:
-            return known * self.assumed[rest], self.ring.context.constant(1)
+        if not rest.is_one() and Key(rest) in self.assumed:
+            return known * self.assumed[Key(rest)], self.ring.context.constant(1)
         return known, rest
 
     def maybe(self, poly: Any | Ratio) -> int | None:
@@ -113,19 +114,20 @@ class Signs:
             poly = poly.num * poly.den
         known, rest = self.split(poly)
         if not rest.is_one():
-            self.assumed[rest] = sign * known
+            self.assumed[Key(rest)] = sign * known
             self._factors.clear()
 
     def factor(self, poly: Any) -> int | None:
         """The sign of an irreducible polynomial with positive leading coefficient."""
-        if poly in self.assumed:
-            return self.assumed[poly]
-        if poly not in self._factors:
+        key = Key(poly)
+        if key in self.assumed:
+            return self.assumed[key]
+        if key not in self._factors:
             sign = self._by_monomials(poly)
             if sign is None and degree(poly) > 0:
                 sign = self._by_range(poly)
-            self._factors[poly] = sign
-        return self._factors[poly]
+            self._factors[key] = sign
+        return self._factors[key]
 
     def _by_monomials(self, poly: Any) -> int | None:
         signs = set()
@@ -138,7 +140,7 @@ class Signs:
         return signs.pop() if len(signs) == 1 and 0 not in signs else None
 
     def _generator(self, i: int) -> int:
-        return self.assumed.get(self.ring.context.gen(i), self._generators[i])
+        return self.assumed.get(self._names[i], self._generators[i])
 
     def _by_range(self, poly: Any) -> int | None:
         """Descartes' rule without sign changes, after mapping the span to v > 0."""

@@ -25,10 +25,27 @@ class Known:
 
 def _known() -> dict[str, Known]:
     table: dict[str, Known] = {}
-    for name in (
-        "sqrt exp log sin cos tan cot sec csc asin acos atan "
-        "sinh cosh tanh asinh acosh atanh sign"
-    ).split():
+    for name in [
+        "sqrt",
+        "exp",
+        "log",
+        "sin",
+        "cos",
+        "tan",
+        "cot",
+        "sec",
+        "csc",
+        "asin",
+        "acos",
+        "atan",
+        "sinh",
+        "cosh",
+        "tanh",
+        "asinh",
+        "acosh",
+        "atanh",
+        "sign",
+    ]:
         table[name] = Known(getattr(sympy, name), (1,))
     table["abs"] = Known(sympy.Abs, (1,))
     table["atan2"] = Known(sympy.atan2, (2,))

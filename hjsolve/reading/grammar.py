@@ -227,8 +227,15 @@ def _joined(left: Node, operator: _Operator, right: Node) -> Node:
     if left.kind != kind or left.closed:
         left = Node(kind, left.position, children=[left], turned=[False])
         left.operator = operator.position
-    left.children.append(right)
-    left.turned.append(operator.text in "-/")
+    turned = operator.text in "-/"
+    if kind == "product" and right.kind == "product" and not any(right.turned):
+        # 1/(2*(x + 1)) divides by 2 and by x + 1, so that SymPy does not multiply
+        # the 2 out.  A bracket that divides is left alone: 1/(1/0) stays refused.
+        left.children.extend(right.children)
+        left.turned.extend([turned] * len(right.children))
+    else:
+        left.children.append(right)
+        left.turned.append(turned)
     return left
 
 

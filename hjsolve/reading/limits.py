@@ -30,6 +30,7 @@ class Limits:
         exponent: size of a numeric exponent, and of nested ones multiplied.
         exponent_denominator: denominator of a rational exponent.
         tower: nested exponents that hold a variable.
+        bars: nested absolute values that are still simplified.
         exponential: size of the constant argument of an exponential.
         argument_bits: size of the constant argument of any other function.
     """
@@ -47,6 +48,7 @@ class Limits:
     exponent: int = 10_000
     exponent_denominator: int = 1_000_000
     tower: int = 3
+    bars: int = 10
     exponential: int = 1_000_000
     argument_bits: int = 64
 

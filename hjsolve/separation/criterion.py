@@ -31,7 +31,7 @@ from sympy import Rational, Symbol, oo
 
 from hjsolve.algebra.balls import BallJet, BallWalk, NotSupported, Ridges
 from hjsolve.algebra.graph import Graph, TooLarge
-from hjsolve.algebra.identity import attempts, chance, middle
+from hjsolve.algebra.identity import SAFE_CHANCE, attempts, chance, middle
 from hjsolve.algebra.jets import Jet, JetWalk
 from hjsolve.algebra.modular import Array, NoPoints, square_roots
 from hjsolve.algebra.sampling import Range, points, stand_ins
@@ -46,10 +46,6 @@ WIDEST_ZERO = 1e-60
 
 REFEREES = 2
 """Real points at which a modular zero is looked at again when roots may be dependent."""
-
-SAFE_CHANCE = 1e-20
-"""A modular zero with a larger chance of being accidental is not called proved."""
-
 
 @dataclass(frozen=True, slots=True)
 class _Link:
@@ -124,9 +120,7 @@ class _Detector:
     def verdict(self) -> Verdict:
         moving = self._moving()
         links = self._components(moving, self._levi_civita_mod, self._levi_civita)
-        sums = self._components(
-            list(range(self.n)), self._mixed_mod, self._mixed, time=False
-        )
+        sums = self._components(list(range(self.n)), self._mixed_mod, self._mixed, time=False)
         blocks, proof, bound, obstruction = links
         ignorable = tuple(q for k, q in enumerate(self.h.coordinates) if k not in moving)
         blocks = _in_order(_with_time(self.h), (*blocks, *((q,) for q in ignorable)))
@@ -322,8 +316,8 @@ class _Detector:
         for point in points(self._symbols(), self.ranges, TRIES):
             value = None
             try:
-                for jets in attempts(BallWalk(self.graph, point, self.stand, chosen, seconds)):
-                    value = value_of(*_readers(jets[0]))
+                walk = BallWalk(self.graph, point, self.stand, chosen, seconds)
+                for value in attempts(walk, lambda jets: value_of(*_readers(jets[0]))):
                     if value.is_zero() or not value.contains(0):
                         break
             except NotSupported as error:
@@ -356,7 +350,7 @@ def _readers(jet: BallJet) -> tuple[Callable[[int], Any], Callable[[int, int], A
 
 
 def _formula(stand_in: Ridges) -> Any:
-    """The function that stands in for an arbitrary one, in x_1, x_2, …"""
+    """The function that stands in for an arbitrary one, written in x_1, x_2 and so on."""
     total: Any = 0
     for direction, coefficients in zip(stand_in.directions, stand_in.coefficients, strict=True):
         letters = [Symbol(f"x_{k + 1}") for k in range(len(direction))]

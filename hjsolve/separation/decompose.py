@@ -14,9 +14,11 @@ from dataclasses import dataclass, field
 import sympy as sp
 from sympy import Add, Dummy, Expr, Mul, Pow, Rational, Symbol
 
+from hjsolve.algebra.generators import Generators, NotRational
 from hjsolve.algebra.identity import vanish
+from hjsolve.algebra.isolate import INVERSES, TWO_VALUED, inverse_power
 from hjsolve.records import Truth
-from hjsolve.separation.momentum import Solved, from_coefficients, inverse_power, solve_for
+from hjsolve.separation.momentum import Solved, from_carrier, solve_for
 from hjsolve.separation.staeckel import Block, leaves
 
 EXPAND_OPERATIONS = 4000
@@ -72,6 +74,8 @@ class _Decomposer:
             self._leaf(k, value, blocks[0])
             return
         moving = frozenset().union(*(b.symbols for b in blocks))
+        if isinstance(k, Add) and len(_grouped(k, Add, blocks)) == 1:
+            k = _factored(k)
         k, value = _strip(k, value, moving)
         undone = _undone(k, value)
         if undone is not None:
@@ -147,7 +151,7 @@ class _Decomposer:
             self.pieces.equations[leaf.block] = leaf.equation.xreplace(put)
             if len(leaf.block.momenta) == 1:
                 parts = {n: c.xreplace(put) for n, c in leaf.parts.items()}
-                solved = from_coefficients(parts, leaf.block.momenta[0])
+                solved = from_carrier(parts, leaf.carrier, leaf.block.momenta[0])
                 if solved is None:
                     self.pieces.missing.append(leaf.block)
                 else:
@@ -175,29 +179,17 @@ def _strip(k: Expr, value: Expr, moving: frozenset[Symbol]) -> tuple[Expr, Expr]
 
 
 def _undone(k: Expr, value: Expr) -> tuple[Expr, Expr] | None:
-    """k = f(inner) = value as (inner, f⁻¹(value))."""
+    """K = f(inner) = value as (inner, f⁻¹(value))."""
     if isinstance(k, Pow) and isinstance(k.exp, Rational):
         return k.base, inverse_power(value, k.exp)
     if isinstance(k, Mul) and all(isinstance(f, (Pow, sp.exp)) for f in k.args):
         merged = _merged_exponentials(k)
         if isinstance(merged, sp.exp):
             return merged.args[0], sp.log(value)
-    inverse = _INVERSES.get(type(k))
+    inverse = INVERSES.get(type(k)) or TWO_VALUED.get(type(k))
     if inverse is not None:
         return k.args[0], inverse(value)
     return None
-
-
-_INVERSES = {
-    sp.exp: sp.log,
-    sp.log: sp.exp,
-    sp.sinh: sp.asinh,
-    sp.asinh: sp.sinh,
-    sp.tanh: sp.atanh,
-    sp.atanh: sp.tanh,
-    sp.atan: sp.tan,
-    sp.cosh: sp.acosh,
-}
 
 
 def _merged_exponentials(k: Expr) -> Expr:
@@ -212,7 +204,7 @@ def _merged_exponentials(k: Expr) -> Expr:
 
 
 def _opened(k: Expr) -> Expr:
-    """k multiplied out, logarithms of products opened."""
+    """K multiplied out, logarithms of products opened."""
     try:
         opened = sp.expand(k, log=True, force=False)
         if isinstance(opened, sp.log) or opened.has(sp.log):
@@ -220,6 +212,19 @@ def _opened(k: Expr) -> Expr:
     except (RecursionError, MemoryError):
         return k
     return opened
+
+
+def _factored(k: Expr) -> Expr:
+    """k as a product of factors over the integers, where it is a fraction of generators."""
+    try:
+        ring = Generators([k])
+        value = ring.ratio(k)
+    except (NotRational, ArithmeticError):
+        return k
+    factors = value.numerator.factor()[1]
+    if len(factors) < 2:
+        return k
+    return ring.factored(value.numerator) / ring.factored(value.denominator)
 
 
 def _grouped(k: Expr, kind: type, blocks: list[Block]) -> list[tuple[list[Block], Expr]]:
@@ -246,7 +251,7 @@ def _grouped(k: Expr, kind: type, blocks: list[Block]) -> list[tuple[list[Block]
 def _by_freezing(
     k: Expr, blocks: list[Block], groups: list[frozenset[Symbol]]
 ) -> list[tuple[list[Block], Expr]]:
-    """k as a sum over ``groups``, each part k with all others frozen; proved before use."""
+    """K as a sum over ``groups``, each part k with all others frozen; proved before use."""
     base: dict[Symbol, Expr] = {}
     for b in blocks:
         for q, p in zip(b.coordinates, b.momenta, strict=True):

@@ -13,9 +13,10 @@ from dataclasses import dataclass
 from typing import Any
 
 import sympy as sp
-from sympy import Add, Expr, Mul, Pow, Rational, Symbol
+from sympy import Add, Expr, Pow, Rational, Symbol
 
 from hjsolve.algebra.generators import Generators, NotRational, Ratio, coefficients
+from hjsolve.algebra.isolate import inverse_power, isolate, spread
 from hjsolve.records import Definition, SeparatedEquation
 
 
@@ -39,7 +40,7 @@ def equation(
 
 
 def solve_for(k: Expr, value: Expr, p: Symbol) -> Solved | None:
-    """p from k = value, or None."""
+    """P from k = value, or None."""
     return _by_degree(k, value, p) or _isolated(k, value, p) or _cleared(k, value, p)
 
 
@@ -51,18 +52,10 @@ def linear(value: Expr) -> Solved:
 def quadratic(a: Expr, b: Expr, c: Expr) -> Solved:
     """The two roots of a p² + b p + c = 0."""
     if b.is_zero:
-        squared = _spread(-c, a)
+        squared = spread(-c, a)
         return Solved(sp.S.Zero, sp.sqrt(squared), squared)
-    half = _spread(-b, 2 * a)
-    return Solved(half, sp.sqrt(half**2 + _spread(-c, a)), None)
-
-
-def _spread(above: Expr, below: Expr) -> Expr:
-    """above/below, term by term, so that 2m(E − V) reads as the literature has it."""
-    inverse = 1 / below
-    if isinstance(above, Add) and not isinstance(inverse, Add):
-        return Add(*(inverse * term for term in above.args))
-    return above * inverse
+    half = spread(-b, 2 * a)
+    return Solved(half, sp.sqrt(half**2 + spread(-c, a)), None)
 
 
 def _by_degree(k: Expr, value: Expr, p: Symbol) -> Solved | None:
@@ -76,71 +69,19 @@ def _by_degree(k: Expr, value: Expr, p: Symbol) -> Solved | None:
     first = sp.diff(k, p).subs(p, 0)
     rest = k.subs(p, 0) - value
     if second == 0:
-        return None if first == 0 else linear(_spread(-rest, first))
+        return None if first == 0 else linear(spread(-rest, first))
     return quadratic(sp.together(second / 2), first, rest)
 
 
-# ---------------------------------------------------- p in one place only
-
-
 def _isolated(k: Expr, value: Expr, p: Symbol) -> Solved | None:
-    """Undo, from outside in, the functions around the only occurrence of p."""
-    if k.count(p) != 1:
+    found = isolate(k, value, p)
+    if found is None:
         return None
-    signed = False
-    while k != p:
-        step = _undo(k, value, p)
-        if step is None:
-            return None
-        k, value, two_valued = step
-        if two_valued and k != p:
-            return None
-        signed = signed or two_valued
-    if signed:
-        return Solved(sp.S.Zero, value, sp.expand(value**2) if _is_root(value) else None)
-    return linear(value)
-
-
-def _is_root(value: Expr) -> bool:
-    return isinstance(value, Pow) and value.exp == Rational(1, 2)
-
-
-def _undo(k: Expr, value: Expr, p: Symbol) -> tuple[Expr, Expr, bool] | None:
-    """(inner, its value, whether the inner value has both signs) for k = value."""
-    if isinstance(k, Add):
-        rest, inner = k.as_independent(p, as_Add=True)
-        return inner, value - rest, False
-    if isinstance(k, Mul):
-        factor, inner = k.as_independent(p, as_Add=False)
-        return inner, _spread(value, factor), False
-    if isinstance(k, Pow) and isinstance(k.exp, Rational):
-        return k.base, inverse_power(value, k.exp), k.exp.p % 2 == 0
-    if isinstance(k, sp.Function) and len(k.args) == 1:
-        for kind, inverse, both in _INVERSES:
-            if isinstance(k, kind):
-                return k.args[0], inverse(value), both
-    return None
-
-
-def inverse_power(value: Expr, exponent: Rational) -> Expr:
-    """The real x with x**exponent = value; the one that is not negative when there are two."""
-    if exponent.p % 2 and exponent.q % 2 and exponent.p != 1 and not value.is_nonnegative:
-        return sp.sign(value) * sp.Abs(value) ** (1 / exponent)
-    return value ** (1 / exponent)
-
-
-_INVERSES = (
-    (sp.exp, sp.log, False),
-    (sp.log, sp.exp, False),
-    (sp.sinh, sp.asinh, False),
-    (sp.tanh, sp.atanh, False),
-    (sp.asinh, sp.sinh, False),
-    (sp.atanh, sp.tanh, False),
-    (sp.atan, sp.tan, False),
-    (sp.cosh, sp.acosh, True),
-    (sp.cos, sp.acos, True),
-    (sp.Abs, lambda v: v, True),
-)
+    centre, half = found
+    if half == 0:
+        return linear(centre)
+    whole = isinstance(half, Pow) and half.exp == Rational(1, 2) and centre == 0
+    return Solved(centre, half, half.base if whole else None)
 
 
 # ------------------------------------------------ polynomials in p, or e^p
@@ -162,10 +103,15 @@ def _cleared(k: Expr, value: Expr, p: Symbol) -> Solved | None:
         e: ring.polynomial(c)
         for e, c in coefficients(polynomial, ring.index[used[0]], ring.context).items()
     }
-    if used[0] == p:
+    return from_carrier(parts, used[0], p)
+
+
+def from_carrier(parts: dict[int, Expr], carrier: Expr, p: Symbol) -> Solved | None:
+    """p from Σ parts[k]·carrier^k = 0, where the carrier is p or exp(rate·p)."""
+    if carrier == p:
         return from_coefficients(parts, p)
-    if isinstance(used[0], sp.exp):
-        return _from_exponential(parts, used[0].args[0] / p)
+    if isinstance(carrier, sp.exp):
+        return _from_exponential(parts, carrier.args[0] / p)
     return None
 
 
@@ -194,21 +140,21 @@ def clear_radicals(ring: Generators, polynomial: Any, unwanted: Callable[[Expr],
 
 
 def from_coefficients(parts: dict[int, Expr], p: Symbol) -> Solved | None:
-    """p from Σ parts[k] p^k = 0."""
+    """P from Σ parts[k] p^k = 0."""
     degree = max(parts)
     get = lambda k: parts.get(k, sp.S.Zero)  # noqa: E731 - a local shorthand
     if degree == 1:
-        return linear(_spread(-get(0), get(1)))
+        return linear(spread(-get(0), get(1)))
     if degree == 2:
         return quadratic(get(2), get(1), get(0))
     if set(parts) <= {0, degree}:
-        value = _spread(-get(0), get(degree))
+        value = spread(-get(0), get(degree))
         if degree % 2 == 0:
             return Solved(sp.S.Zero, value ** Rational(1, degree), None)
         return linear(inverse_power(value, sp.Integer(degree)))
     if set(parts) <= {0, 2, 4}:
-        middle = _spread(-get(2), 2 * get(4))
-        inner = sp.sqrt(middle**2 + _spread(-get(0), get(4)))
+        middle = spread(-get(2), 2 * get(4))
+        inner = sp.sqrt(middle**2 + spread(-get(0), get(4)))
         outer = 1 if get(4).is_positive else -1
         squared = middle + outer * inner
         return Solved(sp.S.Zero, sp.sqrt(squared), squared)
@@ -225,17 +171,17 @@ def _named_root(parts: dict[int, Expr], p: Symbol) -> Solved:
 
 
 def _from_exponential(parts: dict[int, Expr], rate: Expr) -> Solved | None:
-    """p from a polynomial in exp(rate·p): first degree, or reciprocal of the second."""
+    """P from a polynomial in exp(rate·p): first degree, or reciprocal of the second."""
     low, high = min(parts), max(parts)
     if rate.free_symbols:
         return None
     if set(parts) == {low, high}:
-        value = _spread(-parts[low], parts[high])
+        value = spread(-parts[low], parts[high])
         return linear(sp.log(value) / (rate * (high - low)))
     middle = (low + high) // 2
     if set(parts) == {low, middle, high} and low + high == 2 * middle:
         a, b, c = parts[high], parts[middle], parts[low]
         if sp.expand(a - c) == 0:  # 2a cosh(rate·p·(high − middle)) + b = 0
-            root = sp.acosh(_spread(-b, 2 * a)) / (rate * (high - middle))
+            root = sp.acosh(spread(-b, 2 * a)) / (rate * (high - middle))
             return Solved(sp.S.Zero, root, None)
     return None

@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import sympy as sp
-from sympy import Add, Eq, Expr, Function, Mul, Symbol
+from sympy import Add, Dummy, Eq, Expr, Function, Mul, Symbol
 
 from hjsolve.algebra.identity import vanish
 from hjsolve.records import (
@@ -66,38 +66,37 @@ class _Separator:
 
     def run(self) -> Separation:
         timing = self._timing(self.h.expression)
-        if timing is None and (self.h.time,) in self.verdict.blocks:
-            return Separation(self.h, self.verdict, canonical=False)
         ignorable = list(self.verdict.ignorable)
         solved_one = None
         if timing is not None and len(ignorable) == len(self.h.coordinates):
             solved_one = ignorable.pop(0)
-        energy = self.letters.next() if timing is not None else None
-        held = {self.momentum[q]: self.letters.next() for q in ignorable}
-        back = {letter: p for p, letter in held.items()}
+        energy = Dummy("energy", real=True) if timing is not None else None
+        held = {self.momentum[q]: Dummy("held", real=True) for q in ignorable}
         k = timing.k if timing is not None else self.h.expression + self.time_momentum
         k = self._without_ignorable(k).xreplace(held)
-        blocks = self._blocks(solved_one)
+        blocks = self._blocks(solved_one, timing is None)
         value = energy if energy is not None else sp.S.Zero
         groups = [frozenset(g) for g in self.verdict.direct_sum]
         pieces = decompose(k, value, blocks, list(held.values()), groups)
-        rename = {c.symbol: self.letters.next() for c in pieces.constants}
-        constants = self._constants(timing, energy, held, pieces.constants, rename, back)
-        equations = self._equations(pieces, held, rename)
+        new = [c.symbol for c in pieces.constants]
+        order = [energy, *held.values(), *new] if energy is not None else [*new, *held.values()]
+        rename = {letter: self.letters.next() for letter in order}
+        constants = self._constants(timing, energy, held, pieces.constants, rename)
+        time_momentum = self._time_part(timing, energy, pieces)
         return Separation(
             self.h,
             self.verdict,
             constants,
-            equations,
-            self._reduced(blocks, pieces, rename, value),
-            self._time_part(timing, energy),
+            self._equations(pieces, held, rename),
+            self._reduced(blocks, pieces, rename),
+            None if time_momentum is None else time_momentum.xreplace(rename),
             canonical=not pieces.missing,
         )
 
     # --------------------------------------------------------------- time
 
     def _timing(self, h: Expr) -> Timing | None:
-        """h as a function of f(t)·k + g(t); None where time does not split off like that."""
+        """H as a function of f(t)·k + g(t); None where time does not split off like that."""
         t = self.h.time
         if not self.h.explicit_time:
             return Timing(h, sp.S.One, sp.S.Zero)
@@ -121,7 +120,7 @@ class _Separator:
         return Timing(within.k, within.factor, within.shift, h.xreplace({inner: inside}), inside)
 
     def _timing_by_base(self, h: Expr, t: Symbol, moving: Sequence[Symbol]) -> Timing | None:
-        """f and g from two points of phase space; kept only if H = f·k + g is proved."""
+        """F and g from two points of phase space; kept only if H = f·k + g is proved."""
         for start in (sp.S.Zero, sp.S.One):
             k = h.subs(t, start)
             if k.has(sp.nan, sp.zoo, sp.oo):
@@ -137,15 +136,18 @@ class _Separator:
                 return Timing(k, factor, shift)
         return None
 
-    def _time_part(self, timing: Timing | None, energy: Symbol | None) -> Expr | None:
-        if timing is None or energy is None:
-            return None
-        return timing.momentum(energy)
+    def _time_part(
+        self, timing: Timing | None, energy: Symbol | None, pieces: Pieces
+    ) -> Expr | None:
+        if timing is not None and energy is not None:
+            return timing.momentum(energy)
+        own = next((b for b in pieces.solved if b.coordinates == (self.h.time,)), None)
+        return None if own is None else pieces.solved[own].drift
 
     # ------------------------------------------------------------- blocks
 
     def _without_ignorable(self, k: Expr) -> Expr:
-        """k at a fixed value of ignorable coordinates that only seem to occur."""
+        """K at a fixed value of ignorable coordinates that only seem to occur."""
         seeming = [q for q in self.verdict.ignorable if k.has(q)]
         for value in (sp.S.One, sp.Rational(1, 2), sp.Rational(1, 3)):
             fixed = k.xreplace({q: value for q in seeming})
@@ -153,13 +155,11 @@ class _Separator:
                 return fixed
         return k
 
-    def _blocks(self, solved_one: Symbol | None) -> list[Block]:
+    def _blocks(self, solved_one: Symbol | None, with_time: bool) -> list[Block]:
         blocks = []
         for members in self.verdict.blocks:
-            if len(members) == 1 and members[0] in self.verdict.ignorable:
-                if members[0] != solved_one:
-                    continue
-            if members == (self.h.time,):
+            held = members[0] in self.verdict.ignorable and members[0] != solved_one
+            if held or (members == (self.h.time,) and not with_time):
                 continue
             momenta = tuple(self.momentum.get(q, self.time_momentum) for q in members)
             blocks.append(Block(tuple(members), momenta))
@@ -174,27 +174,27 @@ class _Separator:
         held: dict[Symbol, Symbol],
         new: list[NewConstant],
         rename: dict[Symbol, Symbol],
-        back: dict[Symbol, Symbol],
     ) -> tuple[Constant, ...]:
-        found = []
+        back = {letter: p for p, letter in held.items()}
+        found = {}
         if timing is not None and energy is not None:
             autonomous = not self.h.explicit_time
             meaning = "energy" if autonomous else _time_meaning(timing, self.h.time)
-            found.append(Constant(energy, meaning, timing.k))
+            found[energy] = Constant(rename[energy], meaning, timing.k)
         domain = dict(zip(self.h.coordinates, self.h.domains, strict=True))
         coordinate = {p: q for q, p in self.momentum.items()}
         for p, letter in held.items():
             q = coordinate[p]
             angular = domain[q].kind == "angle"
             meaning = f"momentum of {q.name}" + (" (angular momentum)" if angular else "")
-            found.append(Constant(letter, meaning, p))
+            found[letter] = Constant(rename[letter], meaning, p)
         for c in new:
             integral = c.integral.xreplace(back)
             meaning = c.meaning
             if meaning == "separation constant":
                 meaning = self._recognised(integral) or meaning
-            found.append(Constant(rename[c.symbol], meaning, integral))
-        return tuple(found)
+            found[c.symbol] = Constant(rename[c.symbol], meaning, integral)
+        return tuple(found[letter] for letter in rename)
 
     def _recognised(self, integral: Expr) -> str | None:
         """The square of the angular momentum, when it is that."""
@@ -229,7 +229,6 @@ class _Separator:
         blocks: list[Block],
         pieces: Pieces,
         rename: dict[Symbol, Symbol],
-        value: Expr,
     ) -> tuple[ReducedEquation, ...]:
         found = []
         for block in blocks:
@@ -237,10 +236,13 @@ class _Separator:
                 continue
             w = Function("S" if self.h.time in block.coordinates else "W")(*block.coordinates)
             put = {
-                p: sp.Derivative(w, q) for q, p in zip(block.coordinates, block.momenta, strict=True)
+                p: sp.Derivative(w, q)
+                for q, p in zip(block.coordinates, block.momenta, strict=True)
             }
             reduced = pieces.equations[block].xreplace(rename)
             constants = {*rename.values(), *self.letters.given}
+            if self.time_momentum in reduced.free_symbols - block.symbols:
+                continue
             moved, kept = reduced.as_independent(*block.symbols, as_Add=True)
             if moved.free_symbols <= constants | {p.symbol for p in self.h.parameters}:
                 found.append(ReducedEquation(block.coordinates, Eq(kept.xreplace(put), -moved)))
@@ -283,10 +285,8 @@ def _fresh(name: str, hamiltonian: Hamiltonian) -> Symbol:
     return Symbol(name, real=True)
 
 
-def _time_factor(
-    h: Expr, t: Symbol, moving: Sequence[Symbol]
-) -> tuple[Expr, Expr] | None:
-    """h = f(t)·k with a common factor f of all terms; None when there is none."""
+def _time_factor(h: Expr, t: Symbol, moving: Sequence[Symbol]) -> tuple[Expr, Expr] | None:
+    """H = f(t)·k with a common factor f of all terms; None when there is none."""
     terms = Add.make_args(h)
     factors, rests = [], []
     for term in terms:

@@ -55,11 +55,15 @@ class Block:
 
 @dataclass(frozen=True, slots=True)
 class Leaf:
-    """Σ_k parts[k] p^k = 0 for a block of one, monic; ``equation`` = 0 for any block."""
+    """Σ_k parts[k]·carrier^k = 0 for a block of one, monic; ``equation`` = 0 for any block.
+
+    The carrier is the momentum, or its exponential where H knows only that.
+    """
 
     block: Block
     parts: dict[int, Expr]
     equation: Expr
+    carrier: Expr
 
 
 @dataclass(frozen=True, slots=True)
@@ -107,7 +111,10 @@ class _Group:
         self.values = {p: Dummy(f"a_{p.name}", real=True) for b in blocks for p in b.momenta}
         self.opaque: dict[Expr, Symbol] = {}
         first = Generators([k])
+        self.carriers = {p: _carrier(p, first.items) for p in self.values}
         for g in first.items:
+            if g in self.carriers.values():
+                continue
             if self._owner(g) is not None and not _has_number(g) and g not in self.values:
                 self.opaque[g] = Dummy("c", real=True)
         varying = [*self.values.values(), *self.opaque.values()]
@@ -137,9 +144,9 @@ class _Group:
 
     def _joint_left(self) -> bool:
         degrees = self.whole.degrees()
+        held = set(self.carriers.values())
         return any(
-            degrees[n] > 0
-            and (self._owner(g) == -1 or (not g.is_Symbol and self._moves(g)))
+            degrees[n] > 0 and (self._owner(g) == -1 or (self._moves(g) and g not in held))
             for n, g in enumerate(self.ring.items)
         )
 
@@ -154,8 +161,9 @@ class _Group:
         for n, g in enumerate(self.ring.items):
             if self._owner(g) in (None, -1):
                 continue
-            if g in self.values:
-                at[n] = self.ring.generator(self.values[g])
+            held = next((p for p, c in self.carriers.items() if c == g), None)
+            if held is not None:
+                at[n] = self.ring.generator(self.values[held])
             elif g in self.opaque:
                 at[n] = self.ring.generator(self.opaque[g])
             elif isinstance(g, sp.sin):
@@ -247,12 +255,14 @@ class _Group:
         return {k: self.ring.context.from_dict(v) for k, v in grouped.items()}
 
     def _primitive(self, polynomial: Any, left: frozenset[int]) -> Any:
+        if polynomial.is_zero():
+            raise NotRational("a leaf is empty at this base point")
         return _over(polynomial, _common(list(self._split(polynomial, left).values())))
 
     def _normed(self, polynomial: Any, n: int) -> tuple[dict[Exponents, Ratio], int]:
         """Slots of a leaf, normed so that its highest power of momentum does not vary."""
         own = self._own(n)
-        moving = frozenset(self.ring.index[p] for p in self.blocks[n].momenta)
+        moving = frozenset(self.ring.index[self.carriers[p]] for p in self.blocks[n].momenta)
         polynomial = self._primitive(self._primitive(polynomial, own), moving)
         for _ in range(3):
             slots = self._split(polynomial, own)
@@ -292,10 +302,12 @@ class _Group:
             tops.append(top)
             slots |= {(n, e): value for e, value in normed.items()}
         order = sorted(slots, key=lambda s: (s[0], tuple(-e for e in s[1])))
-        for over in (self.varying, self.varying | self.fixed):
+        for over in (self.varying | self.fixed, self.varying):
             # first with ε and α among the monomials, then among the coefficients
-            inner = over == self.varying
-            columns = self._columns(slots, self.varying | self.fixed if inner else self.varying)
+            try:
+                columns = self._columns(slots, over)
+            except NotRational:
+                continue
             moving = [c for m, c in columns.items() if _touches(m, self.varying)]
             basis = _echelon(moving, order)
             if len(basis) == len(self.blocks) - 1:
@@ -303,7 +315,9 @@ class _Group:
                 return self._assemble(basis, rest, order, names)
         raise NotRational("the leaves do not vary in the right number of directions")
 
-    def _columns(self, slots: dict[Slot, Ratio], letters: frozenset[int]) -> dict[Exponents, Column]:
+    def _columns(
+        self, slots: dict[Slot, Ratio], letters: frozenset[int]
+    ) -> dict[Exponents, Column]:
         """Σ monomial(letters)·column: the stacked coefficients sorted by what varies."""
         columns: dict[Exponents, Column] = {}
         for slot, value in slots.items():
@@ -326,7 +340,9 @@ class _Group:
             for column in rest.values():
                 if pivot in column:
                     _subtract(column, vector, column[pivot])
-        entered = {slot[0] for m, c in rest.items() if m[self.ring.index[self.epsilon]] for slot in c}
+        entered = {
+            slot[0] for m, c in rest.items() if m[self.ring.index[self.epsilon]] for slot in c
+        }
         energy = self._linear_energy(rest)
         vectors = [self._scaled(vector, energy, entered, order) for _, vector in basis]
         for column in rest.values():
@@ -393,12 +409,13 @@ class _Group:
         names: Sequence[Symbol],
     ) -> Leaf:
         ring, block = self.ring, self.blocks[n]
+        carrier = self.carriers[block.momenta[0]]
         sources = [(Mul(*self._powers(m)), c) for m, c in rest.items()]
         sources += list(zip(names, vectors, strict=True))
         whole = Add(*(letter * ring.expression(self._value(c, n)) for letter, c in sources))
         if len(block.momenta) > 1:
-            return Leaf(block, {}, whole)
-        momentum = ring.index[block.momenta[0]]
+            return Leaf(block, {}, whole, carrier)
+        momentum = ring.index[carrier]
         by_power = [(letter, self._by_power(c, n, momentum)) for letter, c in sources]
         top = max(e for _, powers in by_power for e in powers)
         norm = next(powers[top] for _, powers in by_power if top in powers)
@@ -407,7 +424,8 @@ class _Group:
             for e, value in powers.items():
                 if e != top:
                     parts[e] = parts.get(e, sp.S.Zero) + letter * self._written(value / norm)
-        return Leaf(block, {k: sp.expand_mul(c, deep=False) for k, c in parts.items()}, whole)
+        opened = {k: sp.expand_mul(c, deep=False) for k, c in parts.items()}
+        return Leaf(block, opened, whole, carrier)
 
     def _by_power(self, column: Column, n: int, momentum: int) -> dict[int, Ratio]:
         """The part of a column in block n by powers of its momentum."""
@@ -472,6 +490,12 @@ class _Group:
 # ------------------------------------------------------- small linear algebra
 
 
+def _carrier(p: Symbol, generators: Sequence[Expr]) -> Expr:
+    """The only generator that holds p; p itself when there are several."""
+    holding = [g for g in generators if g.has(p)]
+    return holding[0] if len(holding) == 1 and isinstance(holding[0], sp.exp) else p
+
+
 def _has_number(g: Expr) -> bool:
     """Whether a generator may be given a rational value at the base point."""
     return isinstance(g, (Symbol, sp.sin, sp.cos)) or (
@@ -506,7 +530,7 @@ def _lcm(a: Any, b: Any) -> Any:
 
 
 def _subtract(column: Column, vector: Column, times: Ratio) -> None:
-    """column −= times·vector, in place."""
+    """Column −= times·vector, in place."""
     for slot, value in vector.items():
         new = column[slot] - value * times if slot in column else -(value * times)
         if new.is_zero():
@@ -576,5 +600,3 @@ def _solve(rows: list[list[Ratio]], unknowns: int) -> list[Ratio]:
                     others[n] = [a - times * b for a, b in zip(other, row, strict=True)]
         done.append(row)
     return [row[-1] for row in done]
-
-

@@ -133,7 +133,7 @@ def _power(base: Any, exponent: Any) -> Any:
 
 
 def _stand_in(coefficients: list[flint.fmpq], arguments: list[Any]) -> Any:
-    """A generic function: Σ c_k s_k^k + Π-terms + an exponential, all from the coefficients.
+    """A generic polynomial Σ c_k s_k^k with all of its numbers from the coefficients.
 
     s_k = Σ a_ki x_i are different combinations of the arguments, so that no mixed
     derivative vanishes by accident.
@@ -173,7 +173,7 @@ def _call(name: str, arguments: list[Any]) -> Any:
         return (x + (x * x + 1).sqrt()).log()
     if name == "acosh":
         return (x + (x * x - 1).sqrt()).log()
-    if name == "abs":
+    if name in ("abs", "Abs"):
         return x if float(_series(x)[0].real.mid()) > 0 else -x
     return _special(name, x, arguments[1:], series)
 
@@ -189,7 +189,7 @@ def _special(name: str, x: Any, rest: list[Any], series: bool) -> Any:
     elif name in ("jacobi_sn", "jacobi_cn", "jacobi_dn"):
         value, first, second = _jacobi(name, centre, rest[0])
     else:
-        raise ValueError(f"no evaluation of {name}")
+        raise NotImplementedError(f"no evaluation of {name}")
     if not series:
         return value
     step = x - flint.acb_series([centre, 0, 0])

@@ -164,17 +164,18 @@ def condition_holds(
 
 
 def _samples(problem: Problem, seed: int, count: int) -> list[tuple[np.ndarray, np.ndarray]]:
-    """Derivatives at ``count`` regular points (finite balls, no dH on a pair zero)."""
+    """Derivatives at ``count`` regular points: finite balls, no ∂H/∂p zero."""
     rng, found = random.Random(seed), []
     for _ in range(12 * count):
-        gradient, hessian = derivatives(problem, rng)
+        try:
+            gradient, hessian = derivatives(problem, rng)
+        except (ValueError, ZeroDivisionError):  # a pole, or a root of zero
+            continue
         regular = all(x.is_finite() for x in gradient) and all(
             x.is_finite() for x in hessian.ravel()
         )
         n = len(gradient) // 2
-        if regular and all(
-            abs(gradient[2 * i]) > 0 or abs(gradient[2 * i + 1]) > 0 for i in range(n)
-        ):
+        if regular and all(abs(gradient[2 * i + 1]) > 0 for i in range(n)):
             found.append((gradient, hessian))
         if len(found) == count:
             return found

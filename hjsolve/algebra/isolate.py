@@ -1,0 +1,87 @@
+"""Undo, from outside in, the functions around the only occurrence of a symbol."""
+
+from __future__ import annotations
+
+import sympy as sp
+from sympy import Add, Expr, Mul, Pow, Rational, Symbol
+
+
+def isolate(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr] | None:
+    """x = centre ± half from k = value, half 0 for one solution; None without an inverse.
+
+    Every inverse taken is the analytic one: asin(u) = v gives u = sin(v) for
+    all v, so that a motion found within one branch continues past its end.
+    """
+    if k.count(x) != 1:
+        return None
+    half: Expr = sp.S.Zero
+    while k != x:
+        step = _undo(k, value, x)
+        if step is None:
+            return None
+        inner, undone, both = step
+        if half != 0:
+            if not isinstance(k, (Add, Mul)):
+                return None
+            if isinstance(k, Mul):
+                half = spread(half, k.as_independent(x, as_Add=False)[0])
+        elif both:
+            undone, half = sp.S.Zero, undone
+        k, value = inner, undone
+    return value, half
+
+
+def spread(above: Expr, below: Expr) -> Expr:
+    """above/below, term by term, so that 2m(E − V) reads as the literature has it."""
+    inverse = 1 / below
+    if isinstance(above, Add) and not isinstance(inverse, Add):
+        return Add(*(inverse * term for term in above.args))
+    return above * inverse
+
+
+def inverse_power(value: Expr, exponent: Rational) -> Expr:
+    """The real x with x**exponent = value; the one that is not negative when there are two."""
+    if exponent.p % 2 and exponent.q % 2 and exponent.p != 1 and not value.is_nonnegative:
+        return sp.sign(value) * sp.Abs(value) ** (1 / exponent)
+    return value ** (1 / exponent)
+
+
+def _undo(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:
+    """(inner, its value, whether the inner value has both signs) for k = value."""
+    if isinstance(k, Add):
+        rest, inner = k.as_independent(x, as_Add=True)
+        return inner, value - rest, False
+    if isinstance(k, Mul):
+        factor, inner = k.as_independent(x, as_Add=False)
+        return inner, spread(value, factor), False
+    if isinstance(k, Pow) and isinstance(k.exp, Rational):
+        both = k.exp.p % 2 == 0 and not k.base.is_nonnegative
+        return k.base, inverse_power(value, k.exp), both
+    inverse = INVERSES.get(type(k)) or TWO_VALUED.get(type(k))
+    if inverse is None:
+        return None
+    return k.args[0], inverse(value), type(k) in TWO_VALUED and not k.args[0].is_nonnegative
+
+
+INVERSES = {
+    sp.exp: sp.log,
+    sp.log: sp.exp,
+    sp.sinh: sp.asinh,
+    sp.asinh: sp.sinh,
+    sp.tanh: sp.atanh,
+    sp.atanh: sp.tanh,
+    sp.atan: sp.tan,
+    sp.tan: sp.atan,
+    sp.asin: sp.sin,
+    sp.acos: sp.cos,
+    sp.acosh: sp.cosh,
+    sp.acot: sp.cot,
+}
+"""Functions with one inverse value (on their principal branch)."""
+
+TWO_VALUED = {
+    sp.cosh: sp.acosh,
+    sp.cos: sp.acos,
+    sp.Abs: lambda v: v,
+}
+"""Even functions: both signs of the argument give the value."""

@@ -1,0 +1,168 @@
+"""The Jacobi relations, formed under the integral sign.
+
+β_k = ∂S/∂α_k = Σ_i ∫ ∂p_i/∂α_k dq_i + ∂T/∂α_k, with S = Σ_i W_i(q_i) + T(t).
+Differentiating the integrand first keeps the radical and lowers its order;
+differentiating a finished antiderivative does the opposite.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import sympy as sp
+from sympy import Add, Eq, Expr, Integral, Symbol
+from sympy.core.relational import Relational
+
+from hjsolve.motion.explicit import explicit
+from hjsolve.records import (
+    Antiderivative,
+    CompleteIntegral,
+    Definition,
+    Domain,
+    Formula,
+    Motion,
+    Relation,
+    SeparatedEquation,
+    Separation,
+)
+
+Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
+
+
+@dataclass(frozen=True, slots=True)
+class Quadrature:
+    """∫ ∂p_i/∂α_k dq_i = drift + sign·root."""
+
+    drift: Antiderivative
+    root: Antiderivative
+
+
+def set_in_motion(
+    separation: Separation, integral: CompleteIntegral, integrate: Integrate
+) -> Motion | None:
+    """The Jacobi relations and the explicit motion; None unless H separates completely.
+
+    ``integrate`` is the quadrature room's function.
+    """
+    h = separation.hamiltonian
+    whole = len(separation.equations) == len(h.coordinates) == len(separation.constants)
+    if not whole or separation.time_momentum is None:
+        return None
+    if any(e.where for e in separation.equations):
+        return None
+    domain = dict(zip(h.coordinates, h.domains, strict=True))
+    betas = tuple(_beta(c.symbol) for c in separation.constants)
+    table: dict[tuple[Symbol, Symbol], Quadrature] = {}
+    for e in separation.equations:
+        for c in separation.constants:
+            q = e.coordinate
+            table[q, c.symbol] = Quadrature(
+                integrate(sp.diff(e.drift, c.symbol), q, domain[q]),
+                integrate(slope(e, c.symbol), q, domain[q]),
+            )
+    in_time = {c.symbol: _time_part(separation, integral, c.symbol) for c in separation.constants}
+    relations = tuple(
+        _relation(separation, c.symbol, beta, table, in_time[c.symbol])
+        for c, beta in zip(separation.constants, betas, strict=True)
+    )
+    phases = {
+        c.symbol: beta - in_time[c.symbol]
+        for c, beta in zip(separation.constants, betas, strict=True)
+    }
+    found = explicit(separation, phases, integrate)
+    coordinates = tuple((q, found.coordinates.get(q)) for q in h.coordinates)
+    momenta = tuple((p, found.momenta.get(p)) for p in h.momenta)
+    return Motion(relations, coordinates, momenta)
+
+
+def slope(e: SeparatedEquation, alpha: Symbol) -> Expr:
+    """∂root/∂α, through p² where that is at hand."""
+    if e.root == 0:
+        return sp.S.Zero
+    if isinstance(e.root, sp.Pow) and e.root.exp == sp.Rational(1, 2):
+        above = sp.diff(e.root.base, alpha)
+        return above / (2 * e.root)
+    return sp.diff(e.root, alpha)
+
+
+def _beta(alpha: Symbol) -> Symbol:
+    return Symbol(alpha.name.replace("alpha", "beta", 1), real=True)
+
+
+def _time_part(separation: Separation, integral: CompleteIntegral, alpha: Symbol) -> Expr:
+    if integral.time_term is None or separation.time_momentum is None:
+        return sp.S.Zero
+    if integral.time_term.has(Integral):
+        t = separation.hamiltonian.time
+        inner = sp.diff(separation.time_momentum, alpha)
+        return inner * t if not inner.has(t) else Integral(inner, (t, Symbol("t_0"), t))
+    return sp.diff(integral.time_term, alpha)
+
+
+def _relation(
+    separation: Separation,
+    alpha: Symbol,
+    beta: Symbol,
+    table: dict[tuple[Symbol, Symbol], Quadrature],
+    time_part: Expr,
+) -> Relation:
+    parts: list[Expr] = [time_part]
+    where: list[Definition] = []
+    valid: list[Relational] = []
+    present: list[Symbol] = []
+    for e in separation.equations:
+        quadrature = table[e.coordinate, alpha]
+        for factor, anti in ((sp.S.One, quadrature.drift), (e.sign, quadrature.root)):
+            if anti.integrand == 0:
+                continue
+            form = _written(anti)
+            parts.append(factor * form.expression)
+            where += [d for d in form.where if d not in where]
+            valid += [v for v in form.valid if v not in valid]
+            if e.coordinate not in present:
+                present.append(e.coordinate)
+    formula = Formula(Eq(Add(*parts), beta, evaluate=False), tuple(where), tuple(valid))
+    return Relation(beta, formula, _says(separation, alpha, beta, present, time_part))
+
+
+def _written(anti: Antiderivative) -> Formula:
+    if anti.closed_forms:
+        return anti.closed_forms[0]
+    q = anti.variable
+    start = Symbol(f"{q.name}_0", real=True)
+    words = f"reference point: any fixed value of {q.name} in the interval of motion"
+    return Formula(Integral(anti.integrand, (q, start, q)), (Definition(start, free=words),))
+
+
+def _says(
+    separation: Separation,
+    alpha: Symbol,
+    beta: Symbol,
+    present: list[Symbol],
+    time_part: Expr,
+) -> str:
+    """What a relation tells, in words."""
+    h = separation.hamiltonian
+    names = ", ".join(q.name for q in present)
+    if time_part != 0:
+        if time_part == -h.time:
+            return (
+                f"motion in time: ∂W/∂{alpha.name} = {h.time.name} + {beta.name} "
+                f"is the coordinate that grows uniformly with time; it ties {names} to time"
+            )
+        return f"motion in time: ties {names} to {h.time.name}"
+    if len(present) < 2:
+        return f"phase constant of {names}"
+    ignorable = [q for q in present if q in separation.verdict.ignorable]
+    sums = {q: g for g in separation.verdict.direct_sum for q in g}
+    if all(sums[q] != sums[present[0]] for q in present[1:]):
+        return (
+            f"phase of {names} relative to each other, without time: the shape of the orbit "
+            "(for two equal oscillators 0 or half a period is a line, a quarter at equal "
+            "amplitudes a circle, else an ellipse)"
+        )
+    if ignorable:
+        others = ", ".join(q.name for q in present if q not in ignorable)
+        return f"orbit: {ignorable[0].name} as a function of {others}, time has dropped out"
+    return f"orbit: ties {names} to each other, time has dropped out"

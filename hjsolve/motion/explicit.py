@@ -1,0 +1,259 @@
+"""q(t) and p(t) as explicit functions of time.
+
+Along the motion every coordinate has the parameter τ in which its own
+quadrature is inverted, q(τ), and then every other quadrature over that
+coordinate is an integral over τ that runs smoothly through turning points:
+dq/root = dτ/G(q(τ)).  The sign of the branch is thereby used once, as the
+orientation of τ.
+
+A coordinate inverts in physical time when a combination of the Jacobi
+relations with constant coefficients holds no other coordinate; these
+combinations are found by linear algebra on the rows ∂p_i/∂α_k.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import sympy as sp
+from sympy import Add, Expr, Matrix, Mul, Symbol
+from sympy.core.relational import Relational
+
+from hjsolve.algebra.identity import vanish
+from hjsolve.motion.inversions import invert
+from hjsolve.records import (
+    Antiderivative,
+    Domain,
+    Formula,
+    SeparatedEquation,
+    Separation,
+    Truth,
+)
+
+Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
+SAMPLES = (sp.Rational(2, 3), sp.Rational(5, 7), sp.Rational(8, 5), sp.Rational(11, 9))
+
+
+@dataclass(slots=True)
+class Found:
+    """The explicit motions found so far."""
+
+    coordinates: dict[Symbol, Formula] = field(default_factory=dict)
+    momenta: dict[Symbol, Formula] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class Parametrised:
+    """q(τ) with τ = sign·phase(t); ``speed`` is G(q) in dq/root = dτ/G."""
+
+    equation: SeparatedEquation
+    tau: Symbol
+    path: Expr
+    speed: Expr
+    phase: Expr
+    form: Expr
+    valid: tuple[Relational, ...]
+
+
+def explicit(separation: Separation, phases: dict[Symbol, Expr], integrate: Integrate) -> Found:
+    """Explicit motions; ``phases`` is β_k − ∂T/∂α_k for each constant α_k."""
+    return _Explicit(separation, phases, integrate).run()
+
+
+class _Explicit:
+    def __init__(
+        self, separation: Separation, phases: dict[Symbol, Expr], integrate: Integrate
+    ) -> None:
+        self.s = separation
+        self.h = separation.hamiltonian
+        self.alphas = [c.symbol for c in separation.constants]
+        self.phases = phases
+        self.integrate = integrate
+        self.domain = dict(zip(self.h.coordinates, self.h.domains, strict=True))
+        self.found = Found()
+        self.rows = {e.coordinate: self._rows(e) for e in separation.equations}
+
+    def run(self) -> Found:
+        parametrised = []
+        for e in self.s.equations:
+            weights = self._weights(e)
+            if weights is None:
+                continue
+            p = self._parametrise(e, weights)
+            if p is not None:
+                parametrised.append(p)
+                self._record(p)
+        for e in self.s.equations:
+            if e.coordinate not in self.found.coordinates and e.root == 0:
+                self._follow(e, parametrised)
+            if e.root == 0 and not e.drift.has(e.coordinate):
+                self.found.momenta.setdefault(e.momentum, Formula(e.drift))
+        return self.found
+
+    # ---------------------------------------------- which relations combine
+
+    def _rows(self, e: SeparatedEquation) -> list[list[Expr]]:
+        """∂drift/∂α and ∂(root²)/∂α as rows of functions of q."""
+        rows = [[sp.diff(e.drift, a) for a in self.alphas]]
+        if e.root != 0:
+            rows.append([sp.diff(_square(e.root), a) for a in self.alphas])
+        return [r for r in rows if any(x != 0 for x in r)]
+
+    def _weights(self, e: SeparatedEquation) -> list[Expr] | None:
+        """c_k with Σ c_k ∂p_i/∂α_k = 0 for all other coordinates i, not for this one."""
+        others: list[list[Expr]] = []
+        for q, rows in self.rows.items():
+            if q == e.coordinate:
+                continue
+            for row in rows:
+                for sample in SAMPLES[: 1 if not any(x.has(q) for x in row) else len(SAMPLES)]:
+                    others.append([x.subs(q, sample) for x in row])
+        if not others:
+            return [sp.S.One] + [sp.S.Zero] * (len(self.alphas) - 1)
+        if any(x.has(sp.nan, sp.zoo) for row in others for x in row):
+            return None
+        for vector in Matrix(others).nullspace(simplify=True):
+            weights = list(vector)
+            own = [
+                Add(*(c * x for c, x in zip(weights, row, strict=True)))
+                for row in self.rows[e.coordinate]
+            ]
+            if any(vanish([x])[0].truth is Truth.REFUTED for x in own) and self._holds(e, weights):
+                return weights
+        return None
+
+    def _holds(self, e: SeparatedEquation, weights: list[Expr]) -> bool:
+        """The weights were found at sample points; prove them as identities."""
+        claims = [
+            Add(*(c * x for c, x in zip(weights, row, strict=True)))
+            for q, rows in self.rows.items()
+            if q != e.coordinate
+            for row in rows
+        ]
+        return all(f.truth is Truth.PROVED for f in vanish(claims)) if claims else True
+
+    # -------------------------------------------------------------- invert
+
+    def _parametrise(self, e: SeparatedEquation, weights: list[Expr]) -> Parametrised | None:
+        """q(τ) from Σ_k c_k times the relations."""
+        q = e.coordinate
+        phase = Add(*(c * self.phases[a] for c, a in zip(weights, self.alphas, strict=True)))
+        drift = Add(*(c * sp.diff(e.drift, a) for c, a in zip(weights, self.alphas, strict=True)))
+        tau = sp.Dummy("tau", real=True)
+        if e.root == 0:
+            speed, integrand = sp.S.One, sp.simplify(drift)
+        else:
+            if drift != 0:
+                return None
+            squares = (sp.diff(_square(e.root), a) for a in self.alphas)
+            speed = sp.simplify(Add(*(c * x for c, x in zip(weights, squares, strict=True))) / 2)
+            integrand = speed / e.root
+        anti = self.integrate(integrand, q, self.domain[q])
+        for form in anti.closed_forms:
+            path = invert(form.expression, q, tau, self.domain[q])
+            if path is not None and not form.where:
+                return Parametrised(e, tau, path, speed, phase, form.expression, form.valid)
+        return None
+
+    def _record(self, p: Parametrised) -> None:
+        e = p.equation
+        sign = e.sign if e.root != 0 and not _turns(p.path, p.tau) else sp.S.One
+        run = {p.tau: _oriented(sign, p.phase)}
+        self.found.coordinates[e.coordinate] = Formula(p.path.xreplace(run), (), p.valid)
+        if e.root == 0:
+            momentum = e.drift.xreplace({e.coordinate: p.path}).xreplace(run)
+        else:
+            along = p.speed.xreplace({e.coordinate: p.path}) * sp.diff(p.path, p.tau)
+            drift = e.drift.xreplace({e.coordinate: p.path})
+            momentum = (drift + sign * along).xreplace(run)
+        self.found.momenta[e.momentum] = Formula(momentum, (), p.valid)
+
+    # ------------------------------------------------- ignorable, following
+
+    def _follow(self, e: SeparatedEquation, leaders: list[Parametrised]) -> None:
+        """An ignorable coordinate whose rate is driven by coordinates already explicit.
+
+        Its relation is q + Σ_i ∫ ∂p_i/∂α dq_i = phase; each integral is taken
+        over τ, and matched to the closed form over q_i at τ = 0.
+        """
+        alpha = next((a for a in self.alphas if e.drift == a), None)
+        if alpha is None:
+            return
+        total: Expr = self.phases[alpha]
+        valid: list[Relational] = []
+        for other in self.s.equations:
+            if other is e:
+                continue
+            drift, root = sp.diff(other.drift, alpha), sp.diff(_square(other.root), alpha) / 2
+            if drift == 0 and root == 0:
+                continue
+            leader = next((p for p in leaders if p.equation is other), None)
+            if leader is None or drift != 0:
+                return
+            part = self._along(leader, root)
+            if part is None:
+                return
+            total -= part
+            valid += [v for v in leader.valid if v not in valid]
+        self.found.coordinates[e.coordinate] = Formula(total, (), tuple(valid))
+        self.found.momenta[e.momentum] = Formula(e.drift, (), tuple(valid))
+
+    def _along(self, leader: Parametrised, above: Expr) -> Expr | None:
+        """sign·∫ above/root dq as a function of time, through the turning points."""
+        q = leader.equation.coordinate
+        rate = sp.expand((above / leader.speed).xreplace({q: leader.path}))
+        smooth = _smooth_antiderivative(rate, leader.tau)
+        anti = self.integrate(above / leader.equation.root, q, self.domain[q])
+        if smooth is None or not anti.closed_forms:
+            return None
+        form = next((f for f in anti.closed_forms if set(f.valid) == set(leader.valid)), None)
+        if form is None:
+            return None
+        start = form.expression.xreplace({q: leader.path}).subs(leader.tau, 0)
+        offset = sp.simplify(start - smooth.subs(leader.tau, 0))
+        if offset.has(sp.nan, sp.zoo, sp.oo):
+            return None
+        sign = leader.equation.sign if not _turns(leader.path, leader.tau) else sp.S.One
+        return sign * (smooth + offset).xreplace({leader.tau: _oriented(sign, leader.phase)})
+
+
+def _square(root: Expr) -> Expr:
+    if isinstance(root, sp.Pow) and root.exp == sp.Rational(1, 2):
+        return root.base
+    return root**2
+
+
+def _oriented(sign: Expr, phase: Expr) -> Expr:
+    return phase if sign == 1 else sign * phase
+
+
+def _turns(path: Expr, tau: Symbol) -> bool:
+    """Whether q(τ) has a turning point, so that both signs of p are on one path."""
+    if any(tau in f.free_symbols for f in path.atoms(sp.sin, sp.cos)):
+        return True
+    return bool(sp.expand(path - path.xreplace({tau: -tau})) == 0) or _parabola(path, tau)
+
+
+def _parabola(path: Expr, tau: Symbol) -> bool:
+    return path.is_polynomial(tau) and sp.degree(path, tau) == 2
+
+
+def _smooth_antiderivative(rate: Expr, tau: Symbol) -> Expr | None:
+    """∫ rate dτ for sums of products of polynomials, sin, cos, exp of linear arguments."""
+    allowed = (sp.sin, sp.cos, sp.exp, sp.sinh, sp.cosh)
+    for term in Add.make_args(rate):
+        for factor in Mul.make_args(term):
+            base, exponent = factor.as_base_exp() if not isinstance(factor, sp.exp) else (factor, 1)
+            if not factor.has(tau):
+                continue
+            if not (sp.Integer(exponent) == exponent and exponent > 0):
+                return None
+            if base != tau and not isinstance(base, allowed):
+                return None
+            if base != tau and sp.diff(base.args[0], tau, 2) != 0:
+                return None
+    result = sp.integrals.manualintegrate.manualintegrate(rate, tau)
+    if result.has(sp.Integral):
+        return None
+    return result if vanish([sp.diff(result, tau) - rate])[0].truth is Truth.PROVED else None

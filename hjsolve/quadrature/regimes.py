@@ -1,0 +1,129 @@
+"""From the formula of each piece to one formula a regime.
+
+The formulas ask for signs as they go.  A sign nobody knows opens two regimes;
+no table of cases is kept, and no piecewise expression is ever built.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+from fractions import Fraction
+
+from sympy import Add, Expr, Mul, Symbol, false, true
+from sympy.core.relational import Relational
+
+from hjsolve.quadrature.dress import Dress
+from hjsolve.quadrature.problem import Piece, Reading
+from hjsolve.quadrature.ratios import GivenUp, degree, factors
+from hjsolve.quadrature.reduction import Reduction
+from hjsolve.quadrature.signs import Assumption, Signs, Undetermined
+from hjsolve.records import Formula
+
+REGIME_LIMIT = 16
+"""More regimes than this are not worth having; the integral is left as it stands."""
+
+
+@dataclass(frozen=True)
+class Context:
+    """What a formula may ask: signs, the writer, and whether its term is the only one."""
+
+    signs: Signs
+    dress: Dress
+    only: bool
+
+
+_HALF = Fraction(1, 2)
+
+PieceFormula = Callable[[Piece, Context], Expr]
+
+
+def regimes(
+    reading: Reading, formula: PieceFormula, terms: Callable[[Reduction], int]
+) -> list[tuple[Formula, tuple[Assumption, ...]]]:
+    """One Formula a regime with the assumptions it rests on.
+
+    ``terms`` counts the terms of a piece: a formula that consists of one term
+    is written so that the variable occurs once.  Raises GivenUp.
+    """
+    leaves: list[tuple[Formula, tuple[Assumption, ...]]] = []
+    stack: list[tuple[Assumption, ...]] = [()]
+    tried = 0
+    while stack:
+        assumed = stack.pop()
+        tried += 1
+        reading.problem.left()
+        if tried > 4 * REGIME_LIMIT or len(leaves) > REGIME_LIMIT:
+            raise GivenUp("too many regimes")
+        kernel = reading.kernel
+        try:
+            pieces = reading.under(assumed)
+            only = sum(terms(piece.reduction) for piece in pieces) == 1
+            total = []
+            for piece in pieces:
+                kernel = piece.kernel
+                signs = reading.signs(assumed, kernel)
+                writer = Dress(signs, kernel.expression, kernel.partner)
+                scale = writer.product((piece.scale, _HALF))
+                e = formula(piece, Context(signs, writer, only))
+                total.extend(Mul(scale, term) for term in Add.make_args(e))
+        except Undetermined as question:
+            where = kernel.expression if degree(question.poly) > 0 else None
+            for sign in (-question.first, question.first):
+                stack.append((*assumed, Assumption(question.poly, sign, where)))
+            continue
+        valid = _conditions(reading, assumed)
+        if valid is not None:
+            leaves.append((Formula(Add(*total), (), valid), assumed))
+    return leaves
+
+
+def _conditions(
+    reading: Reading, assumed: tuple[Assumption, ...]
+) -> tuple[Relational, ...] | None:
+    """The inequalities of a regime, None when they contradict the symbols' assumptions."""
+    valid: list[Relational] = list(reading.kernel.restriction)
+    for a in _needed(reading, assumed):
+        kernel = reading.kernel
+        u = kernel.expression if a.kernel is None else a.kernel
+        partner = kernel.partner if u == kernel.expression else None
+        writer = Dress(reading.signs(), u, partner)
+        valid.append(writer.inequality(a.poly, a.sign))
+    kept: list[Relational] = []
+    for relation in valid:
+        if relation == false:
+            return None
+        if relation != true and relation not in kept:
+            kept.append(relation)
+    return tuple(kept)
+
+
+def _needed(reading: Reading, assumed: tuple[Assumption, ...]) -> list[Assumption]:
+    """The assumptions that do not follow from the others."""
+    kept = list(assumed)
+    for a in assumed:
+        others = tuple(o for o in kept if o is not a)
+        if a.kernel is None and reading.signs(others).maybe(a.poly) == a.sign:
+            kept = list(others)
+    return kept
+
+
+def boundary(reading: Reading, assumed: Assumption) -> tuple[Symbol, Expr] | None:
+    """(symbol, value) that solves poly = 0, when it is linear in a constant of either sign."""
+    if assumed.kernel is not None:
+        return None
+    writer = Dress(reading.signs(), reading.kernel.expression, None)
+    for factor, _ in factors(assumed.poly)[1]:
+        for i, constant in enumerate(reading.ring.constants, start=1):
+            if not isinstance(constant, Symbol) or constant.is_positive or constant.is_negative:
+                continue
+            slope = factor.derivative(i)
+            if slope.is_zero() or slope.degrees()[i] > 0:
+                continue
+            if reading.signs().maybe(slope) is None:
+                continue
+            rest = factor - slope * reading.ring.context.gen(i)
+            value = reading.ring.polynomial(-rest) / reading.ring.polynomial(slope)
+            return constant, writer.ratio(value)
+    return None

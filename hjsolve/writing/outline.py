@@ -1,0 +1,133 @@
+"""A solution as headed lists of formulas, before any notation is chosen.
+
+The terminal text and the LaTeX fragment both read this, so that they never
+say different things.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from sympy import Eq, Expr, Function, Symbol
+from sympy.core.relational import Relational
+
+from hjsolve.records import (
+    Check,
+    CompleteIntegral,
+    Definition,
+    Formula,
+    Motion,
+    Separation,
+    Solution,
+)
+from hjsolve.writing.solution import closed_forms, family
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """A remark in words, a formula, or both; ``where`` and ``valid`` belong to the formula."""
+
+    remark: str = ""
+    formula: Expr | Relational | None = None
+    where: tuple[Definition, ...] = ()
+    valid: tuple[Relational, ...] = ()
+
+
+@dataclass(slots=True)
+class Section:
+    """A heading and what stands under it."""
+
+    heading: str
+    lines: list[Line] = field(default_factory=list)
+
+
+def outline(solution: Solution) -> list[Section]:
+    """The sections of a solution that have something to say, in the order of the mathematics."""
+    sections = [
+        _problem(solution),
+        _constants(solution.separation),
+        _separated(solution.separation),
+        _integral(solution.integral) if solution.integral else Section("Complete integral"),
+        _motion(solution.motion) if solution.motion else Section("Motion"),
+        Section("Certificate", [Line(_check(check)) for check in solution.certificate.checks]),
+    ]
+    return [section for section in sections if section.lines]
+
+
+def _equal(left: Expr, right: Expr) -> Relational:
+    return Eq(left, right, evaluate=False)
+
+
+def _line(left: Expr | None, right: Formula, remark: str = "") -> Line:
+    formula = right.expression if left is None else _equal(left, right.expression)
+    return Line(remark, formula, right.where, right.valid)
+
+
+def _problem(solution: Solution) -> Section:
+    hamiltonian = solution.hamiltonian
+    lines = [Line("", _equal(Symbol("H"), hamiltonian.expression))]
+    if solution.integral is not None:
+        lines.append(Line("Hamilton–Jacobi equation", solution.integral.equation))
+    return Section("Problem", lines)
+
+
+def _constants(separation: Separation) -> Section:
+    section = Section("Constants of the motion")
+    for constant in separation.constants:
+        integral = constant.first_integral
+        if integral is None:
+            section.lines.append(
+                Line(f"{constant.meaning}; no closed form as a first integral", constant.symbol)
+            )
+        else:
+            section.lines.append(Line(constant.meaning, _equal(constant.symbol, integral)))
+    return section
+
+
+def _separated(separation: Separation) -> Section:
+    section = Section("Separated equations")
+    for equation in separation.equations:
+        section.lines.append(Line("", _equal(equation.momentum, equation.solution), equation.where))
+    for reduced in separation.reduced:
+        names = ", ".join(symbol.name for symbol in reduced.block)
+        section.lines.append(Line(f"left on the block {names}", reduced.equation))
+    return section
+
+
+def _integral(integral: CompleteIntegral) -> Section:
+    section = Section("Complete integral")
+    if integral.principal is not None:
+        section.lines.append(_line(Symbol("S"), integral.principal, "principal function"))
+    if integral.characteristic is not None:
+        section.lines.append(_line(Symbol("W"), integral.characteristic, "characteristic function"))
+    for term in integral.terms:
+        coordinate = term.equation.coordinate
+        left = Function(f"W_{coordinate.name}")(coordinate)
+        forms = closed_forms(term)
+        section.lines.extend(_line(left, form, family(term)) for form in forms)
+        if not forms:
+            reason = term.root.reason or term.drift.reason or "no family took it"
+            section.lines.append(
+                Line(
+                    f"no closed form: {reason}",
+                    _equal(left.diff(coordinate), term.equation.drift + term.equation.root),
+                    term.equation.where,
+                )
+            )
+    return section
+
+
+def _motion(motion: Motion) -> Section:
+    section = Section("Motion")
+    section.lines.extend(
+        _line(None, relation.equation, relation.says) for relation in motion.relations
+    )
+    for symbol, formula in (*motion.coordinates, *motion.momenta):
+        if formula is not None:
+            section.lines.append(_line(symbol, formula))
+    return section
+
+
+def _check(check: Check) -> str:
+    bound = "" if check.bound is None else f", bound {check.bound:.1g}"
+    return f"{check.verdict}: {check.claim} ({check.method}{bound})"

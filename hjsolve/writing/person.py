@@ -1,0 +1,88 @@
+"""A solution as text for a terminal, 100 columns wide."""
+
+from __future__ import annotations
+
+import textwrap
+
+from sympy import Expr
+from sympy.core.relational import Relational
+from sympy.printing.pretty import pretty
+
+from hjsolve.records import Definition, Solution
+from hjsolve.writing.depth import deep
+from hjsolve.writing.infix import write_infix
+from hjsolve.writing.outline import Line, outline
+from hjsolve.writing.sentences import verdict_sentences
+
+WIDTH = 100
+_INDENT = "  "
+
+
+def for_person(solution: Solution) -> str:
+    """The verdict in a plain sentence, then every formula that was found.
+
+    A formula is set in Unicode when that takes one line, else written infix,
+    which can be posted back.
+    """
+    paragraphs = ["\n".join(_wrapped(said, "") for said in verdict_sentences(solution))]
+    for section in outline(solution):
+        lines = [section.heading]
+        for line in section.lines:
+            lines.extend(_written(line))
+        paragraphs.append("\n".join(lines))
+    return "\n\n".join(paragraphs) + "\n"
+
+
+def _written(line: Line) -> list[str]:
+    written = []
+    if line.formula is not None:
+        shown = one_line(line.formula)
+        remark = f"   ({line.remark})" if line.remark else ""
+        if len(_INDENT) + len(shown) + len(remark) > WIDTH and remark:
+            written.append(_wrapped(f"{line.remark}:", _INDENT))
+            remark = ""
+        written.append(_wrapped(shown + remark, _INDENT))
+    elif line.remark:
+        written.append(_wrapped(line.remark, _INDENT))
+    written.extend(_wrapped(f"where {_definition(d)}", _INDENT * 2) for d in line.where)
+    if line.valid:
+        conditions = ", ".join(one_line(condition) for condition in line.valid)
+        written.append(_wrapped(f"for {conditions}", _INDENT * 2))
+    return written
+
+
+def one_line(formula: Expr | Relational) -> str:
+    """One line of Unicode where that is possible within the width, else infix."""
+    text = write_infix(formula)
+    if len(text) > WIDTH:
+        return text
+    # Only a short formula is tried: the two-dimensional printer is slow on a long one.
+    shown = str(deep(_pretty, formula))
+    return text if "\n" in shown or len(shown) + len(_INDENT) > WIDTH else shown
+
+
+def _pretty(formula: Expr | Relational) -> str:
+    return str(pretty(formula, use_unicode=True, wrap_line=False))
+
+
+def _definition(definition: Definition) -> str:
+    name = definition.symbol.name
+    if definition.definition is not None:
+        return f"{name} = {write_infix(definition.definition)}"
+    if definition.root_of is not None and definition.unknown is not None:
+        return (
+            f"{name} is real root number {definition.index}, in ascending order, of "
+            f"{write_infix(definition.root_of)} in {definition.unknown.name}"
+        )
+    return f"{name} {definition.free or 'is free'}"
+
+
+def _wrapped(text: str, indent: str) -> str:
+    return textwrap.fill(
+        text,
+        WIDTH,
+        initial_indent=indent,
+        subsequent_indent=indent + _INDENT,
+        break_long_words=False,
+        break_on_hyphens=False,
+    )

@@ -1,0 +1,196 @@
+"""A solution as the JSON body of the contract's answer."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from typing import Any, TypeAlias
+
+from sympy import Expr, S
+from sympy.core.relational import Relational
+
+from hjsolve.records import (
+    Antiderivative,
+    Certificate,
+    CompleteIntegral,
+    Formula,
+    Motion,
+    Obstruction,
+    SeparatedEquation,
+    Separation,
+    Solution,
+    Term,
+    Verdict,
+)
+from hjsolve.writing.formula import DEFAULT, formula_object
+from hjsolve.writing.infix import write_infix
+from hjsolve.writing.problem import number_text, problem_document
+
+Write: TypeAlias = Callable[[Formula | Expr | Relational | None], dict[str, Any] | None]
+
+
+def solution_document(solution: Solution, *, notations: Sequence[str] = DEFAULT) -> dict[str, Any]:
+    """Everything of the answer but ``id`` and ``state``, which the service adds.
+
+    What was not worked out is null (an object) or empty (a list).  Formulas
+    carry the notations asked for, in that order.
+
+    Raises:
+        KeyError: a notation that ``WRITERS`` does not have.
+    """
+
+    def write(formula: Formula | Expr | Relational | None) -> dict[str, Any] | None:
+        return None if formula is None else formula_object(formula, notations)
+
+    separation = solution.separation
+    integral = solution.integral
+    return {
+        "problem": problem_document(solution.hamiltonian),
+        "verdict": verdict_object(separation.verdict),
+        "charts": [],
+        "charts_complete": False,
+        "chart_used": None,
+        "hamilton_jacobi_equation": write(integral.equation if integral else None),
+        "constants": [
+            {
+                "symbol": constant.symbol.name,
+                "meaning": constant.meaning,
+                "first_integral": write(constant.first_integral),
+            }
+            for constant in separation.constants
+        ],
+        "separated_equations": [_equation(eq, write) for eq in separation.equations],
+        "reduced_equations": [
+            {"block": [s.name for s in reduced.block], "equation": write(reduced.equation)}
+            for reduced in separation.reduced
+        ],
+        "complete_integral": _integral(integral, write) if integral else None,
+        "motion": _motion(solution.motion, write) if solution.motion else None,
+        "certificate": _certificate(solution.certificate),
+        **_form(separation),
+    }
+
+
+def _form(separation: Separation) -> dict[str, Any]:
+    """``canonical_constants`` is false when the constants are values at a base point."""
+    return {"canonical_constants": separation.canonical} if separation.equations else {}
+
+
+def verdict_object(verdict: Verdict) -> dict[str, Any]:
+    """The verdict; ``bound`` and ``limit`` stand beside the contract's fields."""
+    return {
+        "separability": verdict.separability,
+        "blocks": [[symbol.name for symbol in block] for block in verdict.blocks],
+        "ignorable": [symbol.name for symbol in verdict.ignorable],
+        "direct_sum": [[symbol.name for symbol in group] for group in verdict.direct_sum],
+        "proof": verdict.proof,
+        "bound": verdict.bound,
+        "obstruction": _obstruction(verdict.obstruction) if verdict.obstruction else None,
+        "limit": verdict.limit,
+    }
+
+
+def _obstruction(obstruction: Obstruction) -> dict[str, Any]:
+    written: dict[str, Any] = {
+        "pair": list(obstruction.pair),
+        "point": {name: number_text(value) for name, value in obstruction.point},
+        "value": {"mid": obstruction.midpoint, "radius": obstruction.radius},
+    }
+    if obstruction.functions:
+        written["functions"] = {name: write_infix(f) for name, f in obstruction.functions}
+    return written
+
+
+def _equation(equation: SeparatedEquation, write: Write) -> dict[str, Any]:
+    where = equation.where
+    return {
+        "coordinate": equation.coordinate.name,
+        "momentum": write(Formula(equation.solution, where)),
+        "momentum_squared": (
+            None if equation.squared is None else write(Formula(equation.squared, where))
+        ),
+    }
+
+
+def _integral(integral: CompleteIntegral, write: Write) -> dict[str, Any]:
+    return {
+        "principal": write(integral.principal),
+        "characteristic": write(integral.characteristic),
+        "time_term": write(integral.time_term),
+        "terms": [_term(term, write) for term in integral.terms],
+    }
+
+
+def _term(term: Term, write: Write) -> dict[str, Any]:
+    forms = closed_forms(term)
+    written = [write(form) for form in forms]
+    return {
+        "coordinate": term.equation.coordinate.name,
+        "integrand": write(Formula(term.equation.drift + term.equation.root, term.equation.where)),
+        "closed_form": written[0] if written else None,
+        "closed_forms": written,
+        "family": family(term),
+        "substitution": write(term.root.substitution or term.drift.substitution),
+        "reason": "; ".join(dict.fromkeys(r for r in (term.drift.reason, term.root.reason) if r)),
+    }
+
+
+def closed_forms(term: Term) -> tuple[Formula, ...]:
+    """Antiderivatives of dW_i/dq_i on the positive branch, one a pair of regimes.
+
+    Empty when either part of the momentum has none; a part that is
+    identically zero adds nothing and needs none.
+    """
+    drifts, roots = _forms(term.drift), _forms(term.root)
+    return tuple(
+        Formula(
+            drift.expression + root.expression,
+            tuple(dict.fromkeys((*drift.where, *root.where))),
+            tuple(dict.fromkeys((*drift.valid, *root.valid))),
+        )
+        for root in roots
+        for drift in drifts
+    )
+
+
+def _forms(part: Antiderivative) -> tuple[Formula, ...]:
+    if part.closed_forms or part.integrand != 0:
+        return part.closed_forms
+    return (Formula(S.Zero),)
+
+
+_ORDER = ("elementary", "elliptic", "unevaluated")
+
+
+def family(term: Term) -> str:
+    """The harder of the families of the two parts that are not zero."""
+    parts = [part for part in (term.drift, term.root) if part.integrand != 0]
+    return max((part.family for part in parts), key=_ORDER.index, default="elementary")
+
+
+def _motion(motion: Motion, write: Write) -> dict[str, Any]:
+    return {
+        "relations": [
+            {
+                "constant": relation.constant.name,
+                "equation": write(relation.equation),
+                "says": relation.says,
+            }
+            for relation in motion.relations
+        ],
+        "coordinates": {symbol.name: write(formula) for symbol, formula in motion.coordinates},
+        "momenta": {symbol.name: write(formula) for symbol, formula in motion.momenta},
+    }
+
+
+def _certificate(certificate: Certificate) -> dict[str, Any]:
+    return {
+        "checks": [
+            {
+                "claim": check.claim,
+                "verdict": str(check.verdict),
+                "method": check.method,
+                "bound": check.bound,
+            }
+            for check in certificate.checks
+        ]
+    }
