@@ -11,7 +11,7 @@ from fastapi.openapi.utils import get_openapi
 
 from api.errors import install_handlers
 from api.jobs.queue import Queue
-from api.jobs.store import Store
+from api.jobs.store import State, Store
 from api.jobs.supervisor import Supervisor
 from api.routes import health, problems, solutions
 from api.schemas import ProblemRequest
@@ -41,6 +41,32 @@ PROBLEM_SCHEMA: dict[str, Any] = {
     },
 }
 
+SOLUTION_SCHEMA: dict[str, Any] = {
+    "title": "Solution",
+    "description": "A problem as read, and what is known of its solution.  README.md describes"
+    " each member; a formula is an object with `infix` and `latex`.",
+    "type": "object",
+    "required": ["id", "state", "problem"],
+    "properties": {
+        "id": {"type": "string"},
+        "state": {"type": "string", "enum": [str(state) for state in State]},
+        "stage": {"type": "string", "description": "the last stage that began"},
+        "problem_detail": {"$ref": "#/components/schemas/Problem"},
+        "problem": {"type": "object"},
+        **{
+            name: {"type": ["object", "null"]}
+            for name in (
+                *("verdict", "hamilton_jacobi_equation", "complete_integral"),
+                *("motion", "certificate"),
+            )
+        },
+        **{
+            name: {"type": "array", "items": {"type": "object"}}
+            for name in ("constants", "separated_equations", "reduced_equations")
+        },
+    },
+}
+
 
 def create_app(settings: Settings, worker_module: str = "api.jobs.worker") -> FastAPI:
     """The application; its processes start and end with its lifespan.
@@ -62,6 +88,7 @@ def create_app(settings: Settings, worker_module: str = "api.jobs.worker") -> Fa
         version=__version__,
         summary="Separation of Hamilton–Jacobi equations",
         lifespan=lifespan,
+        redirect_slashes=False,
     )
     supervisor = Supervisor(
         count=settings.workers + EXTRA_WORKERS,
@@ -95,6 +122,7 @@ def _openapi(app: FastAPI) -> dict[str, Any]:
                 if VALIDATION_SCHEMA in str(operation["responses"].get("422")):
                     del operation["responses"]["422"]
         schemas["Problem"] = PROBLEM_SCHEMA
+        schemas["Solution"] = SOLUTION_SCHEMA
         schemas[ProblemRequest.__name__] = ProblemRequest.model_json_schema(
             ref_template="#/components/schemas/{model}"
         )

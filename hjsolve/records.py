@@ -152,7 +152,8 @@ class SeparatedEquation:
     """p = drift + sign·root, as a function of its own coordinate and the constants.
 
     ``root`` is not negative where the motion takes place, 0 when the momentum
-    has one branch.  ``squared`` is p² when drift is 0, else None.
+    has one branch.  ``squared`` is p² when drift is 0, else None.  ``valid``
+    holds what was lost when a root in H was squared away.
     """
 
     coordinate: Symbol
@@ -162,6 +163,7 @@ class SeparatedEquation:
     root: Expr
     squared: Expr | None
     where: tuple[Definition, ...] = ()
+    valid: tuple[Relational, ...] = ()
 
     @property
     def solution(self) -> Expr:

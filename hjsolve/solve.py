@@ -4,13 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
+from functools import lru_cache
 
 from hjsolve.algebra.budget import limit
 from hjsolve.algebra.roots import open_squares
 from hjsolve.certification import certify
 from hjsolve.errors import OutOfTime
 from hjsolve.motion import set_in_motion
-from hjsolve.quadrature import integrate
+from hjsolve.quadrature import integrate as quadrature
 from hjsolve.quadrature.complete import complete
 from hjsolve.records import Certificate, Check, Hamiltonian, Separation, Solution, Truth
 from hjsolve.separation import detect, separate
@@ -33,6 +34,7 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
         Fault: a result was refuted by its own certificate.
     """
     tell = on_stage or (lambda _name, _found: None)
+    integrate = lru_cache(maxsize=None)(quadrature)  # W, the relations and q(t) share integrals
     tell("separate", None)
     hamiltonian = replace(hamiltonian, expression=open_squares(hamiltonian.expression))
     verdict = detect(hamiltonian)

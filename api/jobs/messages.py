@@ -7,7 +7,6 @@ a worker taken over by its input gains no code in the service.
 
 from __future__ import annotations
 
-import asyncio
 import json
 from dataclasses import dataclass
 from typing import Any, BinaryIO
@@ -49,26 +48,19 @@ def receive(stream: BinaryIO) -> Message | None:
     line = stream.readline(LINE_LIMIT)
     if not line:
         return None
-    header, sizes = _parse(line)
+    header, sizes = read_header(line)
     parts = tuple(stream.read(size) for size in sizes)
     if [len(part) for part in parts] != sizes:
         raise BrokenMessage("the stream ended in a message")
     return Message(header, parts)
 
 
-async def receive_async(stream: asyncio.StreamReader) -> Message | None:
-    """The same from an asyncio stream."""
-    try:
-        line = await stream.readline()
-        if not line:
-            return None
-        header, sizes = _parse(line)
-        return Message(header, tuple([await stream.readexactly(size) for size in sizes]))
-    except (asyncio.IncompleteReadError, ConnectionError, ValueError) as error:
-        raise BrokenMessage(str(error)) from error
+def read_header(line: bytes) -> tuple[dict[str, Any], list[int]]:
+    """The header in the first line of a message, and the sizes of its parts.
 
-
-def _parse(line: bytes) -> tuple[dict[str, Any], list[int]]:
+    Raises:
+        BrokenMessage: see there.
+    """
     try:
         header = json.loads(line)
         sizes = header.pop("sizes")

@@ -68,7 +68,7 @@ class Queue:
         self._store.add(job)
         task = asyncio.get_running_loop().create_task(self._solve(job))
         self._work[name] = task
-        task.add_done_callback(lambda _: self._forget(name, task))
+        task.add_done_callback(lambda _: self._close(job, task))
         return job
 
     async def cancel(self, job: Job) -> None:
@@ -97,7 +97,10 @@ class Queue:
         try:
             async with self._reading:
                 read = await self._supervisor.run(
-                    {"kind": "read"}, problem, READ_SECONDS, lambda message: None
+                    {"kind": "read", "seconds": READ_SECONDS},
+                    problem,
+                    READ_SECONDS,
+                    lambda message: None,
                 )
         except TimeoutError:
             detail = f"Reading the problem took longer than {READ_SECONDS:g} s; make it smaller."
@@ -147,8 +150,6 @@ class Queue:
             if job.started:
                 spent = time.monotonic() - job.started
                 self._usual_seconds += 0.2 * (spent - self._usual_seconds)
-            self._store.settle(job)
-            job.tell()
 
     def _failure(self, last: Message) -> Problem:
         """What a worker's last message says when it is no answer."""
@@ -178,9 +179,14 @@ class Queue:
             retry_seconds=self.retry_seconds,
         )
 
-    def _forget(self, name: str, task: asyncio.Task[None]) -> None:
-        if self._work.get(name) is task:
-            del self._work[name]
+    def _close(self, job: Job, task: asyncio.Task[None]) -> None:
+        """Settle a job whose task is done, also when it was cancelled before it began."""
+        if not job.ended:
+            job.state = State.CANCELLED
+        if self._work.get(job.id) is task:
+            del self._work[job.id]
+        self._store.settle(job)
+        job.tell()
 
 
 def _advance(job: Job, message: Message) -> None:

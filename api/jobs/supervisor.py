@@ -18,15 +18,13 @@ from dataclasses import dataclass
 from typing import Any
 
 from api.jobs.forkserver import FORK, PROCESS_ID, REAP
-from api.jobs.messages import BrokenMessage, Message, pack, receive_async
+from api.jobs.messages import BrokenMessage, Message, pack, read_header
 from api.jobs.processes import child_environment, module_arguments
 
 log = logging.getLogger("uvicorn.error")
 
 #: A worker grows (56 to 76 MB over 600 jobs when measured), so it is replaced now and then.
 TASKS_PER_WORKER = 200
-#: A worker may be found dead when a task is given to it; the task then goes to another.
-ATTEMPTS = 3
 START_SECONDS = 60.0
 RESTART_SECONDS = 0.5
 STATUS_SECONDS = 2.0
@@ -126,8 +124,14 @@ class Supervisor:
             TimeoutError: the deadline passed and the worker was ended.
             WorkerDied: see there.
         """
-        for _ in range(ATTEMPTS):
-            worker = await self._take()
+        # Every worker may be found dead when a task is given to it; then one that is new.
+        for _ in range(self._count + 1):
+            try:
+                # Not wait_for: that of Python 3.11 loses a cancellation when both come at once.
+                async with asyncio.timeout(START_SECONDS):
+                    worker = await self._take()
+            except TimeoutError:
+                raise WorkerDied("no worker could be started") from None
             accepted = reusable = False
             try:
                 async with asyncio.timeout(seconds):
@@ -260,6 +264,22 @@ class Supervisor:
         task = asyncio.get_running_loop().create_task(work)
         self._tasks.add(task)
         task.add_done_callback(self._tasks.discard)
+
+
+async def receive_async(stream: asyncio.StreamReader) -> Message | None:
+    """Read one message as ``messages.receive`` does, from a stream of the event loop.
+
+    Raises:
+        BrokenMessage: see there; a connection that is lost counts as one.
+    """
+    try:
+        line = await stream.readline()
+        if not line:
+            return None
+        header, sizes = read_header(line)
+        return Message(header, tuple([await stream.readexactly(size) for size in sizes]))
+    except (asyncio.IncompleteReadError, ConnectionError, ValueError) as error:
+        raise BrokenMessage(str(error)) from error
 
 
 async def _describe(status: asyncio.Future[int]) -> str:

@@ -1,6 +1,7 @@
 """What runs in a worker: read a problem, or solve one and tell of every stage.
 
-Tasks come in on a pipe as messages ``read`` and ``solve``, each with the problem as its part.
+Tasks come in on a pipe as messages ``read`` and ``solve``, each with the deadline in ``seconds``
+and the problem as its part.
 Out goes ``accepted``, then for a solve one ``stage`` at the beginning of each stage with what
 was found so far, and last one of
 
@@ -66,13 +67,13 @@ def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
         MemoryError: the limit was reached; the process should take no more tasks, since a
             library that ran out of memory half-way is in no known state.
     """
+    limit_cpu(float(task.header["seconds"]) + CPU_MARGIN_SECONDS)
     try:
         hamiltonian = read_problem(json.loads(task.parts[0]))
         if task.kind == "read":
             document = {"problem": problem_document(hamiltonian)}
             parts = (_json_text(without_mathml(document)), _json_text(document))
             return {"kind": "read", "id": content_id(hamiltonian, __version__), "parts": parts}
-        limit_cpu(float(task.header["seconds"]) + CPU_MARGIN_SECONDS)
         return _solve(hamiltonian, send, render)
     except InputError as error:
         return {

@@ -11,6 +11,7 @@ from typing import Annotated, Any, Literal
 
 from fastapi import APIRouter, Depends, Query, Request
 from fastapi.responses import Response, StreamingResponse
+from starlette.requests import ClientDisconnect
 
 from api.convert import read_request
 from api.errors import MEDIA_TYPE, Problem, Refused
@@ -32,9 +33,17 @@ Notation = Annotated[
 ]
 
 
+def _documented(description: str, media_type: str, schema: str) -> dict[str, Any]:
+    content = {media_type: {"schema": {"$ref": f"#/components/schemas/{schema}"}}}
+    return {"description": description, "content": content}
+
+
 def _error(description: str) -> dict[str, Any]:
-    schema = {"$ref": "#/components/schemas/Problem"}
-    return {"description": description, "content": {MEDIA_TYPE: {"schema": schema}}}
+    return _documented(description, MEDIA_TYPE, "Problem")
+
+
+def _solution(description: str) -> dict[str, Any]:
+    return _documented(description, "application/json", "Solution")
 
 
 ERRORS: dict[int | str, dict[str, Any]] = {404: _error("Unknown id."), 422: _error("No meaning.")}
@@ -82,12 +91,15 @@ async def read_body(request: Request, limit: int) -> bytes:
     """
     chunks: list[bytes] = []
     size = 0
-    async for chunk in request.stream():
-        size += len(chunk)
-        if size <= limit:
-            chunks.append(chunk)
-        elif size > DROPPED_BODIES * limit:
-            break
+    try:
+        async for chunk in request.stream():
+            size += len(chunk)
+            if size <= limit:
+                chunks.append(chunk)
+            elif size > DROPPED_BODIES * limit:
+                break
+    except ClientDisconnect:
+        raise Refused(Problem("not-json", "The body ended early.")) from None
     if size > limit:
         raise Refused(Problem("too-large", f"The body has more than {limit} bytes."))
     return b"".join(chunks)
@@ -129,8 +141,8 @@ def _answer(job: Job, status: int, notation: str | None, headers: dict[str, str]
     "",
     summary="Solve a problem",
     responses={
-        200: {"description": "The solution, or how the solve ended."},
-        202: {"description": "Not ready within the wait; see `Location` and `Retry-After`."},
+        200: _solution("The solution, or how the solve ended."),
+        202: _solution("Not ready within the wait; see `Location` and `Retry-After`."),
         400: _error("The body is no JSON."),
         413: _error("The body is too large."),
         422: _error("The problem can be read but not meant."),
@@ -180,13 +192,21 @@ async def post_solution(
     return _answer(job, 202, notation, headers)
 
 
-@router.get("/{solution_id}", summary="Get a solution", responses=ERRORS)
+@router.get(
+    "/{solution_id}",
+    summary="Get a solution",
+    responses={200: _solution("The solution as far as it has come."), **ERRORS},
+)
 async def get_solution(job: TheJob, notation: Notation = None) -> Response:
     """Return a solution as far as it has come."""
     return _answer(job, 200, notation, {})
 
 
-@router.delete("/{solution_id}", summary="Cancel a solve", responses=ERRORS)
+@router.delete(
+    "/{solution_id}",
+    summary="Cancel a solve",
+    responses={200: _solution("The solution, with what was found."), **ERRORS},
+)
 async def delete_solution(job: TheJob, queue: TheQueue, notation: Notation = None) -> Response:
     """Cancel a solve that waits or runs; one that has ended stays as it is.
 
@@ -226,17 +246,18 @@ async def _events(request: Request, job: Job, seconds: float) -> AsyncIterator[b
         stop = time.monotonic() + seconds
         told = 0
         while True:
-            for stage in job.stages[told:]:
+            # Taken before anything is sent: what changes meanwhile is seen the next time round.
+            changed, ended, stages = job.changed, job.ended, job.stages
+            for stage in stages[told:]:
                 yield _event("stage", {"stage": stage.name, "seconds": stage.seconds})
-            told = len(job.stages)
-            if job.ended:
+            told = len(stages)
+            if ended:
                 yield _event("end", {"state": job.state})
                 return
             left = stop - time.monotonic()
             if left <= 0:
                 return
             try:
-                changed = job.changed
                 await asyncio.wait_for(changed.wait(), min(left, HEARTBEAT_SECONDS))
             except TimeoutError:
                 yield b": still at it\n\n"

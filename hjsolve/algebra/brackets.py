@@ -1,4 +1,4 @@
-"""Poisson brackets of many functions at once, without writing them out.
+"""Poisson brackets and independence of many functions, without writing them out.
 
 The gradients come from one walk of a shared graph; the bracket of a pair is a
 sum of products of their entries.  Writing the brackets as expressions first
@@ -12,6 +12,7 @@ from itertools import combinations
 from typing import Any
 
 import numpy as np
+from flint import arb_mat
 from sympy import Expr, Symbol
 
 from hjsolve.algebra.balls import BallJet, BallWalk, NotSupported
@@ -53,6 +54,35 @@ def brackets(
             seen = Finding(Truth.PROVED, "modular", bound)
         found.append(seen)
     return found[: len(commuting)], found[len(commuting) :]
+
+
+def independent(
+    h: Hamiltonian, functions: Sequence[Expr], ranges: Mapping[Symbol, Range], tries: int = 60
+) -> Finding:
+    """Is det ∂F/∂p identically zero?  REFUTED with a point where a ball excludes 0."""
+    try:
+        graph = Graph(functions)
+    except (TooLarge, TypeError):
+        return Finding(Truth.UNDECIDED, "graph too large")
+    n = len(h.momenta)
+    index = {p: k for k, p in enumerate(h.momenta)}
+    symbols = [node.payload for node in graph.nodes if node.op == "symbol"]
+    stand = stand_ins(graph, h.functions)
+
+    def determinant(jets: Sequence[BallJet]) -> Any:
+        zero = jets[0].value * 0
+        return arb_mat([[j.first.get(k, zero) for k in range(n)] for j in jets]).det()
+
+    for point in points(symbols, ranges, tries):
+        try:
+            for value in attempts(BallWalk(graph, point, stand, index), determinant):
+                if not value.contains(0):
+                    return Finding(
+                        Truth.REFUTED, "balls", None, tuple(point.items()), middle(value)
+                    )
+        except NotSupported:
+            break
+    return Finding(Truth.UNDECIDED, "balls")
 
 
 def _bracket(a: int, b: int, n: int) -> Callable[[Gradient], Any]:

@@ -36,6 +36,10 @@ PRECISIONS = (128, 512, 2048, 8192)
 SAFE_CHANCE = 1e-20
 """A modular zero with a larger chance of being accidental is not called proved."""
 
+ENOUGH, REFEREES = 8, 2
+"""Points at which balls must contain 0 before an expression that is not formally
+zero is given up, and before a formal zero with dependent roots is believed."""
+
 PRIME = float(2**30)
 """A lower bound on the primes of ``modular``."""
 
@@ -98,14 +102,13 @@ def vanish(
     findings = []
     for expression in expressions:
         finding = _formal(expression)
-        if finding is None and len(_roots(expression)) > 1:
+        if finding is None and (positive or _roots(expression)):
             finding = _formal(unify_roots(expression, positive))
-        doubtful = finding is None or len(_roots(expression)) > 1
-        if doubtful:
-            seen = refute(expression, ranges or {}, functions, tries, conditions)
+        if finding is None or len(_roots(expression)) > 1:
+            enough = ENOUGH if finding is None else REFEREES
+            seen = refute(expression, ranges or {}, functions, tries, conditions, enough)
             if finding is None or seen.truth is Truth.REFUTED:
                 finding = seen
-        assert finding is not None
         findings.append(finding)
     return findings
 
@@ -133,11 +136,13 @@ def refute(
     functions: Collection[str] = (),
     tries: int = 24,
     conditions: Sequence[Relational] = (),
+    enough: int = 8,
 ) -> Finding:
     """Look for a real point at which a ball excludes 0.
 
-    REFUTED with the point; UNDECIDED with the largest radius when every ball
-    contained 0, without a bound when no point of the domain was found.
+    REFUTED with the point; UNDECIDED with the largest radius when the balls
+    contained 0 at ``enough`` points (or at all that were found), without a
+    bound when no point of the domain was found.
     """
     try:
         graph = Graph([expression])
@@ -147,6 +152,7 @@ def refute(
     stand = stand_ins(graph, functions)
     symbols = {n.payload for g in (graph, sides) for n in g.nodes if n.op == "symbol"}
     largest: float | None = None
+    met = 0
     for point in points(symbols, ranges, tries if not conditions else 10 * tries):
         if conditions and not _meets(sides, point):
             continue
@@ -155,8 +161,11 @@ def refute(
             continue
         if not value.contains(0):
             return Finding(Truth.REFUTED, "balls", None, tuple(point.items()), middle(value))
-        size = float(abs(value).upper())
+        size = 0.0 if value.is_zero() else max(float(abs(value).upper()), 1e-300)
         largest = size if largest is None else max(largest, size)
+        met += 1
+        if met >= enough:
+            break
     return Finding(Truth.UNDECIDED, "balls", largest)
 
 

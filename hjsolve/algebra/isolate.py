@@ -2,12 +2,23 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import sympy as sp
 from sympy import Add, Expr, Mul, Pow, Rational, Symbol
 
 
-def isolate(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr] | None:
-    """x = centre ± half from k = value, half 0 for one solution; None without an inverse.
+@dataclass(frozen=True, slots=True)
+class Isolated:
+    """x = centre ± half (half 0 for one solution), if all of ``valid`` are ≥ 0."""
+
+    centre: Expr
+    half: Expr
+    valid: tuple[Expr, ...]
+
+
+def isolate(k: Expr, value: Expr, x: Symbol) -> Isolated | None:
+    """x from k = value; None where a step has no inverse.
 
     Every inverse taken is the analytic one: asin(u) = v gives u = sin(v) for
     all v, so that a motion found within one branch continues past its end.
@@ -15,7 +26,10 @@ def isolate(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr] | None:
     if k.count(x) != 1:
         return None
     half: Expr = sp.S.Zero
+    valid: list[Expr] = []
     while k != x:
+        if shows_sign(k):
+            valid.append(value)
         step = _undo(k, value, x)
         if step is None:
             return None
@@ -28,7 +42,14 @@ def isolate(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr] | None:
         elif both:
             undone, half = sp.S.Zero, undone
         k, value = inner, undone
-    return value, half
+    return Isolated(value, half, tuple(valid))
+
+
+def shows_sign(k: Expr) -> bool:
+    """Whether k cannot be negative, which undoing it forgets: an even root, |u|."""
+    if isinstance(k, Pow) and isinstance(k.exp, Rational):
+        return k.exp.q % 2 == 0
+    return isinstance(k, sp.Abs)
 
 
 def spread(above: Expr, below: Expr) -> Expr:

@@ -43,7 +43,14 @@ def unify_roots(expression: Expr, positive: Collection[Expr] = ()) -> Expr:
     put = {
         p: _unified(factors, known, positive) ** p.exp.p for p, factors in factored.items() if factors
     }
-    return expression.xreplace(put)
+    expression = expression.xreplace(put)
+    sizes = {sp.Abs(f): f for f in positive} | {sp.Abs(-f): f for f in positive}
+    for factors in filter(None, factored.values()):
+        sign, odd = _odd(factors)
+        if len(odd) == 2 and not any(f in known or -f in known for f in odd):
+            # a root of f·g shows |f||g| = ±f·g
+            sizes.setdefault(sp.Abs(odd[0]), sign * odd[0] * odd[1] / sp.Abs(odd[1]))
+    return expression.xreplace(sizes)
 
 
 def _odd(factors: list[tuple[Expr, int]]) -> tuple[int, list[Expr]]:

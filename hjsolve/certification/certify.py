@@ -11,10 +11,10 @@ from collections.abc import Sequence
 from itertools import product
 
 import sympy as sp
-from sympy import Dummy, Expr, Integral, Matrix, Symbol
+from sympy import Dummy, Expr, Integral, Symbol
 from sympy.core.relational import Relational
 
-from hjsolve.algebra.brackets import brackets
+from hjsolve.algebra.brackets import brackets, independent
 from hjsolve.algebra.identity import Finding, vanish
 from hjsolve.algebra.sampling import Range
 from hjsolve.errors import Fault
@@ -137,32 +137,29 @@ def _equation(separation: Separation, ranges: dict[Symbol, Range]) -> Check:
     if separation.time_momentum is None or any(e.where for e in separation.equations):
         return Check(claim, Truth.UNDECIDED, "a momentum or time has no explicit formula")
     residues = []
+    conditions = list(dict.fromkeys(v for e in separation.equations for v in e.valid))
     for branch in _branches(separation.equations):
         put = {e.momentum: e.solution.xreplace(branch) for e in separation.equations}
         residues.append(h.expression.xreplace(put) + separation.time_momentum)
-    return _check(claim, vanish(residues, ranges, h.functions, tries=60))
+    positive = [v.rhs for v in conditions]
+    return _check(claim, vanish(residues, ranges, h.functions, 60, conditions, positive))
 
 
 def _independence(separation: Separation, ranges: dict[Symbol, Range]) -> Check:
-    """Det ∂²S/∂q∂α is not identically zero."""
+    """det ∂²S/∂q∂α is not identically zero.
+
+    The momenta p(q, α) invert the first integrals α(q, p), so the determinant
+    is 1/det ∂α/∂p, which has no radicals and is finite wherever it is met.
+    """
     claim = "det ∂²S/∂q∂α ≠ 0: S is a complete integral"
-    method = "ball arithmetic: a point of the domain at which the determinant excludes 0"
-    if any(e.where for e in separation.equations):
-        return Check(claim, Truth.UNDECIDED, "a momentum has no explicit formula")
-    if len(separation.constants) != len(separation.equations):
+    integrals = [c.first_integral for c in separation.constants if c.first_integral is not None]
+    if len(integrals) != len(separation.equations):
         return Check(claim, Truth.UNDECIDED, "constants are missing")
-    rows = []
-    for e in separation.equations:
-        positive = e.drift + e.root
-        rows.append([sp.diff(positive, c.symbol) for c in separation.constants])
-    determinant = Matrix(rows).det(method="berkowitz")
-    found = vanish([determinant], ranges, separation.hamiltonian.functions, tries=400)[0]
-    match found.truth:
-        case Truth.REFUTED:
-            return Check(claim, Truth.PROVED, method, 0.0)
-        case Truth.PROVED:
-            return Check(claim, Truth.REFUTED, ZERO_METHODS["modular"], found.bound)
-    return Check(claim, Truth.UNDECIDED, "no point was found at which all momenta are real")
+    found = independent(separation.hamiltonian, integrals, ranges)
+    if found.truth is Truth.REFUTED:
+        method = "ball arithmetic: a point of phase space at which det ∂α/∂p excludes 0"
+        return Check(claim, Truth.PROVED, method, 0.0)
+    return Check(claim, Truth.UNDECIDED, "no point was found at which det ∂α/∂p excludes 0")
 
 
 # -------------------------------------------------------------- quadratures
@@ -209,7 +206,7 @@ def _differentiated(
     for signs in product((1, -1), repeat=min(len(free), 2)):
         case = {s: sign * Dummy(s.name, positive=True) for s, sign in zip(free, signs, strict=False)}
         antiderivative, integrand = whole.xreplace(case)
-        antiderivative = antiderivative.replace(sp.acosh, _acosh)
+        antiderivative = antiderivative.replace(sp.acosh, _acosh).replace(sp.log, _log)
         residue = sp.diff(antiderivative, q) - integrand
         within = [c.xreplace(case) for c in conditions]
         within = [c for c in within if c != sp.true]
@@ -220,6 +217,11 @@ def _differentiated(
 def _acosh(u: Expr) -> Expr:
     """Acosh for u ≥ 1, without the product of two roots that SymPy's derivative has."""
     return sp.log(u + sp.sqrt(u**2 - 1))
+
+
+def _log(u: Expr) -> Expr:
+    """Log u for log |u|: the derivative is the same, and SymPy knows it for complex u too."""
+    return sp.log(u.args[0] if isinstance(u, sp.Abs) else u)
 
 
 def _signs_shown(expression: Expr, q: Symbol) -> list[tuple[Symbol, int]]:
@@ -240,10 +242,12 @@ def regime(valid: Sequence[Relational]) -> tuple[dict[Symbol, Expr], list[Relati
     b ≤ a with a symbol on one side) the value it has there.
     """
     put: dict[Symbol, Expr] = {}
-    pairs = {(v.lhs, v.rhs) for v in valid}
+    pairs = list(dict.fromkeys((v.lhs, v.rhs) for v in valid))
     for low, high in pairs:
-        if (high, low) in pairs and low.is_Symbol:
-            put[low] = high
+        if (high, low) in pairs:
+            letter, value = (low, high) if low.is_Symbol and not low.is_positive else (high, low)
+            if letter.is_Symbol and not value.has(letter):
+                put[letter] = value
         elif low == 0 and high.is_Symbol and not high.is_positive:
             put.setdefault(high, Dummy(high.name, positive=True))
         elif high == 0 and low.is_Symbol and not low.is_negative:
@@ -278,7 +282,9 @@ def _motion(separation: Separation, motion: Motion, ranges: dict[Symbol, Range])
             put = {s: e.xreplace(branch) for s, e in known.items()}
             residues.append(sp.diff(put[q], h.time) - rate.xreplace(put))
             residues.append(sp.diff(put[p], h.time) - force.xreplace(put))
-        signs, conditions = regime(valid)
+        signs, conditions = regime(tuple(v.xreplace(known) for v in valid))
         residues = [r.xreplace(signs) for r in residues]
-        checks.append(_check(claim, vanish(residues, ranges, h.functions, 60, conditions)))
+        positive = [c.rhs for c in conditions if c.lhs == 0]
+        found = vanish(residues, ranges, h.functions, 60, conditions, positive)
+        checks.append(_check(claim, found))
     return checks

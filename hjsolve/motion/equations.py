@@ -113,6 +113,7 @@ def _relation(
     present: list[Symbol] = []
     for e in separation.equations:
         quadrature = table[e.coordinate, alpha]
+        valid += [v for v in e.valid if v not in valid]
         for factor, anti in ((sp.S.One, quadrature.drift), (e.sign, quadrature.root)):
             if anti.integrand == 0:
                 continue

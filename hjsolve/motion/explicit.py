@@ -153,7 +153,8 @@ class _Explicit:
         for form in anti.closed_forms:
             path = invert(form.expression, q, tau, self.domain[q])
             if path is not None and not form.where:
-                return Parametrised(e, tau, path, speed, phase, form.expression, form.valid)
+                valid = tuple(dict.fromkeys((*form.valid, *e.valid)))
+                return Parametrised(e, tau, path, speed, phase, form.expression, valid)
         return None
 
     def _record(self, p: Parametrised) -> None:
@@ -207,7 +208,7 @@ class _Explicit:
         anti = self.integrate(above / leader.equation.root, q, self.domain[q])
         if smooth is None or not anti.closed_forms:
             return None
-        form = next((f for f in anti.closed_forms if set(f.valid) == set(leader.valid)), None)
+        form = next((f for f in anti.closed_forms if set(f.valid) <= set(leader.valid)), None)
         if form is None:
             return None
         start = form.expression.xreplace({q: leader.path}).subs(leader.tau, 0)

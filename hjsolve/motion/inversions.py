@@ -41,10 +41,10 @@ def _single(form: Expr, q: Symbol, tau: Symbol, domain: Domain) -> Expr | None:
     found = isolate(form, tau, q)
     if found is None:
         return None
-    centre, half = found
-    if half == 0:
-        return centre
-    return half if centre == 0 and domain.kind in ("half-line", "polar-angle") else None
+    if found.half == 0:
+        return found.centre
+    positive = found.half if found.centre == 0 else None
+    return positive if domain.kind in ("half-line", "polar-angle") else None
 
 
 INVERSIONS = (

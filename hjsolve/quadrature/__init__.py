@@ -8,16 +8,17 @@ from __future__ import annotations
 
 import time
 
-from sympy import Add, Expr, Mul, Symbol
+from sympy import Add, Derivative, Dummy, Expr, Mul, Symbol, default_sort_key
+from sympy.core.function import AppliedUndef
 
 from hjsolve.algebra.budget import limit
 from hjsolve.errors import OutOfTime
 from hjsolve.quadrature.family import Family
 from hjsolve.quadrature.plain import PLAIN
-from hjsolve.quadrature.problem import Problem
+from hjsolve.quadrature.problem import SIZE_LIMIT, Problem, size
 from hjsolve.quadrature.radical import RADICAL
-from hjsolve.quadrature.ratios import GivenUp
 from hjsolve.quadrature.rational import RATIONAL
+from hjsolve.quadrature.ratios import GivenUp
 from hjsolve.quadrature.unevaluated import UNEVALUATED
 from hjsolve.records import Antiderivative, Domain, Formula
 
@@ -45,11 +46,15 @@ def integrate(
     formula is for the boundary between two regimes (zero energy), where its
     symbol has been replaced.
     """
+    if size(integrand) > SIZE_LIMIT:
+        reason = f"the integrand has more than {SIZE_LIMIT} subexpressions"
+        return Antiderivative(integrand, variable, (), "unevaluated", None, reason)
     if integrand.is_zero or not integrand.has(variable):
         form = Formula(integrand * variable)
         return Antiderivative(integrand, variable, (form,), "elementary", variable)
-    constant, kernel = integrand.as_independent(variable, as_Add=False)
-    problem = Problem(kernel, variable, domain, time.monotonic() + seconds)
+    letters = _letters(integrand, variable)
+    constant, rest = integrand.xreplace(letters).as_independent(variable, as_Add=False)
+    problem = Problem(rest, variable, domain, time.monotonic() + seconds)
     reason = ""
     try:
         with limit(seconds):
@@ -60,13 +65,10 @@ def integrate(
                     reason = reason or str(failure)
                     continue
                 if outcome is not None and outcome.formulas:
-                    forms = tuple(
-                        Formula(_scaled(constant, f.expression), f.where, f.valid)
-                        for f in outcome.formulas
-                    )
-                    return Antiderivative(
-                        integrand, variable, forms, family.kind, outcome.substitution
-                    )
+                    back = {letter: f for f, letter in letters.items()}
+                    forms = tuple(_restored(f, constant, back) for f in outcome.formulas)
+                    u = outcome.substitution.xreplace(back)
+                    return Antiderivative(integrand, variable, forms, family.kind, u)
     except OutOfTime:
         reason = f"no closed form within {seconds:g} s"
     except RecursionError:
@@ -75,6 +77,17 @@ def integrate(
     return Antiderivative(integrand, variable, (), "unevaluated", None, reason)
 
 
-def _scaled(constant: Expr, formula: Expr) -> Expr:
+def _letters(integrand: Expr, variable: Symbol) -> dict[Expr, Symbol]:
+    """Letters for the arbitrary functions of other variables: constants here."""
+    found = sorted(
+        (f for f in integrand.atoms(AppliedUndef, Derivative) if not f.has(variable)),
+        key=default_sort_key,
+    )
+    return {f: Dummy(f"f_{i}", real=True) for i, f in enumerate(found)}
+
+
+def _restored(formula: Formula, constant: Expr, back: dict[Expr, Expr]) -> Formula:
     """constant·formula, term by term so that roots of constants cancel."""
-    return Add(*(Mul(constant, term) for term in Add.make_args(formula)))
+    terms = Add.make_args(formula.expression)
+    whole = Add(*(Mul(constant, term) for term in terms)).xreplace(back)
+    return Formula(whole, formula.where, tuple(v.xreplace(back) for v in formula.valid))

@@ -92,6 +92,7 @@ def _sum(terms: tuple[Term, ...], time_term: Expr) -> Formula:
     where: list[Definition] = []
     valid: list[Relational] = []
     for term in terms:
+        valid += [v for v in term.equation.valid if v not in valid]
         for factor, antiderivative in (
             (sp.S.One, term.drift),
             (term.equation.sign, term.root),

@@ -12,7 +12,7 @@ from typing import Any
 from sympy import Abs, Add, Expr, Integer, Lt, Mul, Pow, Rational, S
 from sympy.core.relational import Relational
 
-from hjsolve.quadrature.kernels import Partner
+from hjsolve.quadrature.kernel import Kernel
 from hjsolve.quadrature.ratios import Key, Ratio, coefficients, degree, factors
 from hjsolve.quadrature.signs import Signs
 
@@ -22,16 +22,18 @@ HALF = Fraction(1, 2)
 class Dress:
     """Writes fractions in the kernel ``u`` and the constants of a ring."""
 
-    def __init__(self, signs: Signs, u: Expr, partner: Partner | None) -> None:
-        self.signs, self.ring, self.u, self.partner = signs, signs.ring, u, partner
+    def __init__(self, signs: Signs, kernel: Kernel) -> None:
+        self.signs, self.ring = signs, signs.ring
+        self.u, self.partner, self.shifts = kernel.expression, kernel.partner, kernel.shifts
 
     def product(
         self, *parts: tuple[Ratio | Any, int | Fraction], times: tuple[Expr, ...] = ()
     ) -> Expr:
-        """Π part^exponent · Π times; a part with a half-integer exponent counts by its absolute value.
+        """Π part^exponent · Π times.
 
-        For such a part the factors of unknown sign stay together under one root
-        of their product, which is positive where the formula holds.
+        A part with a half-integer exponent counts by its absolute value; of it
+        the factors of unknown sign stay together under one root of their
+        product, which is positive where the formula holds.
         """
         plain: dict[Key, Fraction] = {}
         positive: dict[Key, Fraction] = {}
@@ -42,7 +44,8 @@ class Dress:
             content, found = _factors(part)
             out.append(_number(content, e))
             target = plain if e.denominator == 1 else positive
-            for factor, n in found.items():
+            for factor, times_ in found.items():
+                n = times_
                 if e.denominator == 2 and n % 2 and self.signs.factor(factor.poly) is None:
                     grouped.setdefault(e if n > 0 else -e, []).append(factor)
                     n -= 1 if n > 0 else -1
@@ -52,17 +55,18 @@ class Dress:
             out.append(self._group(group, e, plain))
         bases: dict[Fraction, list[Any]] = {}
         for key in {**plain, **positive}:
-            n, half = plain.get(key, Fraction(0)), positive.get(key, Fraction(0))
+            whole, half = plain.get(key, Fraction(0)), positive.get(key, Fraction(0))
             sign = self.signs.factor(key.poly)
             if sign is None and half:
-                out.append(self._absolute(key.poly, n, half))
-            elif sign is None or (half == 0 and len(key.poly) > 1):
-                bases.setdefault(n, []).append(key.poly)
+                out.append(self._absolute(key.poly, whole, half))
+            elif sign is None:
+                bases.setdefault(whole, []).append(key.poly)
             else:
-                out.append(Integer(sign) ** int(n))
-                bases.setdefault(n + half, []).append(key.poly if sign > 0 else -key.poly)
+                out.append(Integer(sign) ** int(whole))
+                bases.setdefault(whole + half, []).append(key.poly if sign > 0 else -key.poly)
         for e, polys in bases.items():
-            out.extend(Pow(self.polynomial(p), _rational(e)) for p in _merged(polys))
+            for p in _merged(polys):
+                out.extend(Pow(f, _rational(e)) for f in self._parts(p))
         return _signed(out, times)
 
     def _group(self, group: list[Key], e: Fraction, plain: dict[Key, Fraction]) -> Expr:
@@ -110,6 +114,9 @@ class Dress:
         """A polynomial, collected in u, or in the kernel's partner where that is shorter."""
         if degree(poly) <= 0:
             return self._constant(poly)
+        shifted = self._shifted(poly)
+        if shifted is not None:
+            return Mul(*shifted)
         parts = coefficients(poly)
         plain = sum(map(len, parts))
         if self.partner is not None and degree(poly) >= self.partner.power:
@@ -122,6 +129,19 @@ class Dress:
                         *(self._coefficient(c) * self.u**k * w ** (2 * j) for k, j, c in pairs)
                     )
         return Add(*(self._coefficient(c) * self.u**k for k, c in enumerate(parts)))
+
+    def _parts(self, poly: Any) -> tuple[Expr, ...]:
+        """A polynomial as factors that keep apart under a power."""
+        return self._shifted(poly) or (self.polynomial(poly),)
+
+    def _shifted(self, poly: Any) -> tuple[Expr, ...] | None:
+        """±(u − c) as number and rest, for the c at which the kernel writes it without loss."""
+        for c, written in self.shifts:
+            difference = self.ring.u.num - c
+            if poly in (difference, -difference):
+                number, rest = written.as_coeff_Mul()
+                return (number if poly == difference else -number), rest
+        return None
 
     def _exchange(self, parts: list[Any]) -> list[Any] | None:
         """Coefficients in w² of Σ c_k v^k with v = a + b w²; None unless polynomial."""

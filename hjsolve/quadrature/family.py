@@ -11,6 +11,7 @@ from sympy import Expr, Le
 from hjsolve.algebra.balls import NotSupported
 from hjsolve.algebra.graph import TooLarge
 from hjsolve.quadrature import check
+from hjsolve.quadrature.points import sample
 from hjsolve.quadrature.problem import Problem, Reading
 from hjsolve.quadrature.ratios import GivenUp, Key
 from hjsolve.quadrature.reduction import Reduction
@@ -103,9 +104,7 @@ def _checked(
     for candidate, assumed in regimes(reading, formula, terms):
         problem.left()
         try:
-            points = check.sample(
-                problem.integrand, problem.variable, problem.domain, candidate.valid
-            )
+            points = sample(problem.integrand, problem.variable, problem.domain, candidate.valid)
         except (NotSupported, TooLarge, TypeError) as failure:
             raise GivenUp("the integrand cannot be evaluated for the check") from failure
         if points is None:

@@ -13,18 +13,19 @@ from dataclasses import dataclass, field, replace
 from math import gcd
 from typing import Any
 
-from sympy import Expr, Rational, S, Symbol, oo
+from sympy import Expr, Pow, Rational, S, Symbol, oo
 
 from hjsolve.errors import OutOfTime
-from hjsolve.quadrature.kernels import Kernel, candidates
+from hjsolve.quadrature.kernel import Kernel
+from hjsolve.quadrature.kernels import candidates
 from hjsolve.quadrature.radicals import Reader
 from hjsolve.quadrature.ratios import GivenUp, Ratio, Ring, degree, factors, opaque
 from hjsolve.quadrature.reduction import Reduction, reduce
 from hjsolve.quadrature.signs import Assumption, Signs
 from hjsolve.records import Domain
 
-NODE_LIMIT = 1_500
-"""An integrand with more distinct subexpressions is given up."""
+SIZE_LIMIT = 3_000
+"""An integrand with more subexpressions is given up before anything walks through it."""
 
 
 @dataclass(frozen=True)
@@ -75,8 +76,6 @@ class Problem:
         return self._readings
 
     def _collect(self) -> None:
-        if nodes(self.integrand) > NODE_LIMIT:
-            raise GivenUp(f"the integrand has more than {NODE_LIMIT} distinct subexpressions")
         found: dict[Expr, None] = {}
         _constants(self.integrand, self.variable, found)
         assert self._readings is not None
@@ -176,6 +175,7 @@ def _deflated(kernel: Kernel, q: Ratio, radicand: Any) -> tuple[Kernel, Ratio, A
         expression=kernel.expression**k,
         span=span,
         partner=replace(partner, power=1) if partner else None,
+        shifts=(),
     )
     return deflated, value, _shrink(radicand, 0, k)
 
@@ -189,15 +189,24 @@ def _shrink(poly: Any, offset: int, k: int) -> Any:
     return poly.context().from_dict(terms)
 
 
-def nodes(expression: Expr) -> int:
-    """Distinct subexpressions, counted up to just above NODE_LIMIT."""
-    seen, stack = set(), [expression]
-    while stack and len(seen) <= NODE_LIMIT:
-        e = stack.pop()
-        if e not in seen:
-            seen.add(e)
-            stack.extend(e.args)
-    return len(seen)
+def size(expression: Expr) -> int:
+    """Subexpressions counted as often as they occur, each looked at once.
+
+    Everything below walks the tree, and a graph of a thousand nodes can be a
+    tree of millions.
+    """
+    known: dict[Expr, int] = {}
+    stack = [(expression, False)]
+    while stack:
+        e, ready = stack.pop()
+        if e in known:
+            continue
+        if ready:
+            known[e] = 1 + sum(known[a] for a in e.args)
+        else:
+            stack.append((e, True))
+            stack.extend((a, False) for a in e.args)
+    return known[expression]
 
 
 def _constants(integrand: Expr, variable: Symbol, found: dict[Expr, None]) -> None:
@@ -208,3 +217,12 @@ def _constants(integrand: Expr, variable: Symbol, found: dict[Expr, None]) -> No
     for part in integrand.args:
         if part.has(variable) or not (integrand.is_Pow and isinstance(part, Rational)):
             _constants(part, variable, found)
+
+
+def rooted(integrand: Expr, variable: Symbol) -> bool:
+    """Whether a root of a function of the variable occurs, other than of itself."""
+    return any(
+        power.base.has(variable) and power.exp.is_Rational and power.exp.q > 1
+        for power in integrand.atoms(Pow)
+        if power.base != variable
+    )

@@ -78,8 +78,11 @@ def paired(reduction: Reduction) -> tuple[Pole, ...]:
     while rest:
         pole = rest.pop(0)
         twin = next(
-            (o for o in rest if len(pole.factor) == 2 == len(o.factor)
-             and not (pole.factor[0] + o.factor[0])),
+            (
+                o
+                for o in rest
+                if len(pole.factor) == 2 == len(o.factor) and not (pole.factor[0] + o.factor[0])
+            ),
             None,
         )
         if twin is None:
@@ -96,6 +99,7 @@ def paired(reduction: Reduction) -> tuple[Pole, ...]:
 def formula(piece: Piece, context: Context) -> Expr:
     """The antiderivative of one piece without its scale; raises Undetermined, GivenUp."""
     reduction, dress = piece.reduction, context.dress
+    _suppose_allowed(reduction, context.signs)
     root = dress.root(piece.radicand)
     if piece.written is not None:
         root = dress.product((piece.scale, -HALF)) * sqrt(piece.written)
@@ -122,8 +126,26 @@ def formula(piece: Piece, context: Context) -> Expr:
     return total
 
 
+def _suppose_allowed(reduction: Reduction, signs: Signs) -> None:
+    """What follows from P > 0 somewhere in the range of u.
+
+    A single coefficient that can make P positive is positive (for a positive u
+    or an even power); a quadratic that is negative at both ends of the range
+    opens downwards.
+    """
+    p, (lower, upper) = reduction.radicand, signs.span
+    one_sided = lower.is_nonnegative or not any(p[1::2])
+    hopeful = [c for c in p if c and signs.maybe(c) != -1]
+    if one_sided and len(hopeful) == 1:
+        signs.suppose(hopeful[0], 1)
+    if len(p) == 3 and lower.is_finite and upper.is_finite:
+        ends = [uv.value(p, reduction.ring.constant(end)) for end in (lower, upper)]
+        if all(e and signs.maybe(e) == -1 for e in ends):
+            signs.suppose(p[2], -1)
+
+
 def _j0(reduction: Reduction, root: Expr, context: Context) -> Expr:
-    """w₀ J_0."""
+    """The term w₀ J_0."""
     signs, dress, ring = context.signs, context.dress, reduction.ring
     p, w = reduction.radicand, reduction.weights[0]
     disc = _discriminant(p)
@@ -131,9 +153,7 @@ def _j0(reduction: Reduction, root: Expr, context: Context) -> Expr:
     sign = signs.of(p[2], first=-1)
     if sign < 0:
         signs.suppose(disc, 1)
-        return -dress.product((w, 1), (p[2], -HALF)) * asin(
-            dress.product((line, 1), (disc, -HALF))
-        )
+        return -dress.product((w, 1), (p[2], -HALF)) * asin(dress.product((line, 1), (disc, -HALF)))
     weight = dress.product((w, 1), (p[2], -HALF))
     if not disc:
         side = signs.of(line)
@@ -156,7 +176,7 @@ def _increasing(disc: Ratio, line: Ratio, lead: Ratio, root: Expr, context: Cont
 
 
 def _simple_pole(reduction: Reduction, pole: Pole, root: Expr, context: Context) -> Expr:
-    """n J_{−1}(c) for a rational c."""
+    """The term n J_{−1}(c) for a rational c."""
     signs, dress, ring = context.signs, context.dress, reduction.ring
     p, n, c = reduction.radicand, pole.numerator[0], -pole.factor[0]
     here, slope = uv.value(p, c), uv.value(uv.derivative(p), c)
@@ -189,18 +209,13 @@ def _in_inverse(slope: Ratio, here: Ratio, c: Ratio, disc: Ratio, context: Conte
     """(P′(c) + 2P(c)/(u − c))/√|Δ| with u once and the common factor in front."""
     dress, ring = context.dress, c.ring
     twice = here * ring.number(2)
-    if slope:
-        common = Ratio(ring, slope.num.gcd(twice.num), slope.den.gcd(twice.den))
-    else:
-        common = twice
-    bracket = dress.ratio(slope / common) + dress.product(
-        (twice / common, 1), (ring.u - c, -1)
-    )
+    common = Ratio(ring, slope.num.gcd(twice.num), slope.den.gcd(twice.den)) if slope else twice
+    bracket = dress.ratio(slope / common) + dress.product((twice / common, 1), (ring.u - c, -1))
     return dress.product((common, 1), (disc, -HALF)) * bracket
 
 
 def _linear_radicand(reduction: Reduction, pole: Pole, root: Expr, context: Context) -> Expr:
-    """n J_{−1}(c) for P of degree one: 2n∫dy/(y² − P(c)) with y = √P."""
+    """The term n J_{−1}(c) for P of degree one: 2n∫dy/(y² − P(c)) with y = √P."""
     if len(pole.factor) != 2:
         raise GivenUp("a quadratic pole beside a linear radicand")
     p, c = reduction.radicand, -pole.factor[0]
@@ -211,7 +226,7 @@ def _linear_radicand(reduction: Reduction, pole: Pole, root: Expr, context: Cont
 def _over_root(
     n: Ratio, here: Ratio, slope: Ratio, distance: Ratio, root: Expr, context: Context
 ) -> Expr:
-    """n∫dy/(y² − P(c)), y = √P, where P − P(c) = slope·distance.
+    """The term n∫dy/(y² − P(c)), y = √P, where P − P(c) = slope·distance.
 
     For P(c) > 0 this is −n/√P(c) · log((√P + √P(c))/√|distance|): the artanh of
     √P/√P(c) is the same but loses all digits near the pole.
@@ -339,9 +354,7 @@ def _rational_pole(pole: Pole, context: Context) -> Expr:
         )
     width = dress.product((disc, HALF))
     at = dress.ratio(line)
-    return total + dress.product((rest, 1), (disc, -HALF)) * log(
-        Abs((at - width) / (at + width))
-    )
+    return total + dress.product((rest, 1), (disc, -HALF)) * log(Abs((at - width) / (at + width)))
 
 
 def _logarithm(value: Ratio, context: Context) -> Expr:

@@ -14,7 +14,7 @@ from typing import Any
 
 from sympy import Add, Expr, Integer, Mul, Pow, Rational, Symbol, factorint
 
-from hjsolve.quadrature.ratios import GivenUp, Key, Ratio, Ring, factors
+from hjsolve.quadrature.ratios import GivenUp, Key, Ratio, factors
 from hjsolve.quadrature.signs import Signs
 
 CLASS_LIMIT = 4
@@ -182,6 +182,6 @@ class Reader:
     def _remember(self, radicand: Expr, root: Radicals) -> None:
         """Keep how the integrand writes a square-free P."""
         if len(root.terms) == 1 and radicand.has(self.variable):
-            (key, factor), = root.terms.items()
+            ((key, factor),) = root.terms.items()
             if factor == self.signs.ring.one:
                 self.originals.setdefault(key, radicand)

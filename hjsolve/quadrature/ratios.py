@@ -48,9 +48,7 @@ class Ring:
         self.one = self.number(1)
         self.u = Ratio(self, generators[0], self.context.constant(1))
         self.position = {c: i + 1 for i, c in enumerate(self.constants)}
-        self._generators = tuple(
-            Ratio(self, g, self.context.constant(1)) for g in generators[1:]
-        )
+        self._generators = tuple(Ratio(self, g, self.context.constant(1)) for g in generators[1:])
 
     def number(self, value: int | Fraction) -> Ratio:
         """A rational number as a fraction of the ring."""
@@ -164,7 +162,7 @@ class Ratio:
 class Key:
     """A polynomial as a key of a mapping (``fmpz_mpoly`` itself is not hashable)."""
 
-    __slots__ = ("poly", "_hash")
+    __slots__ = ("_hash", "poly")
 
     def __init__(self, poly: Any) -> None:
         self.poly = poly

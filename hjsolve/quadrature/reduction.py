@@ -134,9 +134,7 @@ def _lower(
         order = k if at_root else k - 1
         algebraic = algebraic + uv.to_ratio(ring, b) / uv.to_ratio(ring, factor) ** order
         # what d(√P b/D^order)·√P leaves over D^(order+1), as one numerator
-        left = uv.add(
-            uv.multiply(uv.derivative(b), p), uv.scale(uv.multiply(b, p_slope), half)
-        )
+        left = uv.add(uv.multiply(uv.derivative(b), p), uv.scale(uv.multiply(b, p_slope), half))
         left = uv.add(
             uv.multiply(left, factor),
             uv.scale(uv.multiply(uv.multiply(b, slope), p), ring.number(-order)),

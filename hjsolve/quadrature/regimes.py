@@ -7,8 +7,7 @@ no table of cases is kept, and no piecewise expression is ever built.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
-
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 from sympy import Add, Expr, Mul, Symbol, false, true
@@ -60,11 +59,11 @@ def regimes(
         try:
             pieces = reading.under(assumed)
             only = sum(terms(piece.reduction) for piece in pieces) == 1
-            total = []
+            total: list[Expr] = []
             for piece in pieces:
                 kernel = piece.kernel
                 signs = reading.signs(assumed, kernel)
-                writer = Dress(signs, kernel.expression, kernel.partner)
+                writer = Dress(signs, kernel)
                 scale = writer.product((piece.scale, _HALF))
                 e = formula(piece, Context(signs, writer, only))
                 total.extend(Mul(scale, term) for term in Add.make_args(e))
@@ -79,16 +78,14 @@ def regimes(
     return leaves
 
 
-def _conditions(
-    reading: Reading, assumed: tuple[Assumption, ...]
-) -> tuple[Relational, ...] | None:
+def _conditions(reading: Reading, assumed: tuple[Assumption, ...]) -> tuple[Relational, ...] | None:
     """The inequalities of a regime, None when they contradict the symbols' assumptions."""
     valid: list[Relational] = list(reading.kernel.restriction)
     for a in _needed(reading, assumed):
         kernel = reading.kernel
-        u = kernel.expression if a.kernel is None else a.kernel
-        partner = kernel.partner if u == kernel.expression else None
-        writer = Dress(reading.signs(), u, partner)
+        if a.kernel is not None and a.kernel != kernel.expression:
+            kernel = replace(kernel, expression=a.kernel, partner=None, shifts=())
+        writer = Dress(reading.signs(), kernel)
         valid.append(writer.inequality(a.poly, a.sign))
     kept: list[Relational] = []
     for relation in valid:
@@ -113,7 +110,7 @@ def boundary(reading: Reading, assumed: Assumption) -> tuple[Symbol, Expr] | Non
     """(symbol, value) that solves poly = 0, when it is linear in a constant of either sign."""
     if assumed.kernel is not None:
         return None
-    writer = Dress(reading.signs(), reading.kernel.expression, None)
+    writer = Dress(reading.signs(), reading.kernel)
     for factor, _ in factors(assumed.poly)[1]:
         for i, constant in enumerate(reading.ring.constants, start=1):
             if not isinstance(constant, Symbol) or constant.is_positive or constant.is_negative:

@@ -77,9 +77,27 @@ class Signs:
                     rest = rest * factor
                 else:
                     known *= s
-        if not rest.is_one() and Key(rest) in self.assumed:
-            return known * self.assumed[Key(rest)], self.ring.context.constant(1)
+        if not rest.is_one():
+            sign = self._product(rest)
+            if sign is not None:
+                return known * sign, self.ring.context.constant(1)
         return known, rest
+
+    def _product(self, rest: Any) -> int | None:
+        """The sign of a product of factors of unknown sign, from the assumed products."""
+        if Key(rest) in self.assumed:
+            return self.assumed[Key(rest)]
+        for key, sign in self.assumed.items():
+            if key.poly.total_degree() > rest.total_degree():
+                quotient, remainder = divmod(key.poly, rest)
+                if remainder.is_zero():
+                    signs = [self.factor(f) for f, n in factors(quotient)[1] if n % 2]
+                    if all(s is not None for s in signs):
+                        whole = sign * (1 if factors(quotient)[0] > 0 else -1)
+                        for s in signs:
+                            whole *= s or 1
+                        return whole
+        return None
 
     def maybe(self, poly: Any | Ratio) -> int | None:
         """+1, -1, or None when the sign is not known."""
@@ -124,6 +142,8 @@ class Signs:
             return self.assumed[key]
         if key not in self._factors:
             sign = self._by_monomials(poly)
+            if sign is None:
+                sign = self._by_difference(poly)
             if sign is None and degree(poly) > 0:
                 sign = self._by_range(poly)
             self._factors[key] = sign
@@ -138,6 +158,15 @@ class Signs:
                     sign *= self._generator(i)
             signs.add(sign)
         return signs.pop() if len(signs) == 1 and 0 not in signs else None
+
+    def _by_difference(self, poly: Any) -> int | None:
+        """From poly = (poly ∓ g) ± g with g assumed: α > 0 once α > D > 0 is."""
+        for key, sign in self.assumed.items():
+            for wanted in (1, -1):
+                rest = poly - key.poly * (wanted * sign)
+                if rest.is_zero() or self._by_monomials(rest) == wanted:
+                    return wanted
+        return None
 
     def _generator(self, i: int) -> int:
         return self.assumed.get(self._names[i], self._generators[i])

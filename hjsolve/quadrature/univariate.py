@@ -34,7 +34,7 @@ def to_ratio(ring: Ring, a: Poly) -> Ratio:
 
 
 def add(a: Poly, b: Poly) -> Poly:
-    """a + b."""
+    """The sum a + b."""
     if len(a) < len(b):
         a, b = b, a
     return trim([x + b[i] if i < len(b) else x for i, x in enumerate(a)])

@@ -9,7 +9,7 @@ exponents, and the bits that powers have put into its constants.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from math import log2
+from math import inf, log2
 
 from flint import arb, fmpq
 from sympy import Expr, Rational
@@ -29,7 +29,7 @@ class Value:
         degree: bound on the products of nested numeric exponents.
         tower: levels of exponents that hold a variable.
         grown: bits that powers have put into folded constants.
-        bars: levels of absolute values.
+        bars: levels of functions of the grammar.
     """
 
     expression: Expr
@@ -69,6 +69,19 @@ def content_bits(expression: Expr) -> float:
         elif factor.is_Pow and factor.base.is_Rational and factor.exp.is_Rational:
             total += _log2(factor.base) * float(abs(factor.exp))
     return total
+
+
+def largest_number(expression: Expr) -> float:
+    """The largest absolute value of the rationals anywhere in an expression."""
+    pending, largest = [expression], 0.0
+    while pending:
+        part = pending.pop()
+        if part.is_Rational:
+            # Compared in bits first: a float does not hold every integer.
+            whole = abs(int(part.p)) // int(part.q)
+            largest = max(largest, float(abs(part)) if whole.bit_length() < 64 else inf)
+        pending.extend(part.args)
+    return largest
 
 
 def folded_bits(expression: Expr) -> int:

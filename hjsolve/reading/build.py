@@ -7,10 +7,11 @@ place in the text.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping
+from collections.abc import Callable, Collection, Mapping
+from dataclasses import replace
 
 from flint import arb
-from sympy import Abs, Add, Expr, Function, Integer, Mul, Pow, S, pi
+from sympy import Abs, Add, Expr, Function, Integer, Mul, Pow, S, pi, sign
 
 from hjsolve.errors import InputError
 from hjsolve.reading import bounds
@@ -21,6 +22,9 @@ from hjsolve.reading.limits import LIMITS
 from hjsolve.reading.numbers import decimal
 
 _EXPONENTIAL = frozenset({"exp", "sinh", "cosh"})
+_SETTLING = 4
+"""Rounds after which an expression counts as settled; two were seen to do."""
+
 _ENDLESS = (S.ComplexInfinity, S.NaN, S.Infinity, S.NegativeInfinity)
 
 
@@ -46,7 +50,15 @@ class Builder:
             count = len(node.children)
             children = done[len(done) - count :]
             del done[len(done) - count :]
-            done.append(self._checked(self._value(node, children), node))
+            value = self._value(node, children)
+            if not value.constant and value.expression.is_Rational:
+                # The variables have cancelled: 9*x/x is the constant 9.
+                value = replace(value, ball=bounds.rational_ball(value.expression))
+            if value.constant or any(
+                part.func is value.expression.func for part in value.expression.args
+            ):
+                value = replace(value, expression=_settled(value.expression))
+            done.append(self._checked(value, node))
         return done.pop()
 
     def refuse(
@@ -144,10 +156,15 @@ class Builder:
         arguments = [child.expression for child in children]
         if known is None:
             expression = Function(name)(*arguments)
-        elif known.make is Abs:
+        elif known.make in (Abs, sign):
             bars += 1
-            expression = _absolute(arguments[0], bars)
+            expression = _folded(known.make, arguments[0], bars)
+        elif bars >= LIMITS.bars and not constant:
+            # Asking for signs through nested hyperbolic functions is exponential in SymPy.
+            bars += 1
+            expression = known.make(*arguments, evaluate=False)
         else:
+            bars += 1
             expression = known.make(*arguments)
         ball = bounds.call_ball(name, balls) if constant and known else None
         return Value(expression, ball, degree, tower, grown, bars)
@@ -230,7 +247,12 @@ class Builder:
         if not exponent.constant:
             tower = max(base.tower, self._taller(exponent.tower, node))
             degree, _, _, bars = _largest([base, exponent])
-            grown = base.grown + exponent.grown
+            # Powers of one base are gathered: 9**(x + 10**50)*9**-x would be evaluated.
+            times = bounds.largest_number(power)
+            if times > LIMITS.exponent:
+                raise self._exponent(node, "a number in this exponent is too large")
+            content = bounds.content_bits(base.expression)
+            grown = max(content, base.grown) * max(times, 1.0) + exponent.grown
             return Value(Pow(base.expression, power), None, degree, tower, grown, bars)
         bound = bounds.size(exponent.ball) if exponent.ball is not None else arb("inf")
         if not bool(bound <= LIMITS.exponent):
@@ -284,6 +306,23 @@ class Builder:
         return ball if ball.is_finite() else bounds.unknown()
 
 
+def _settled(expression: Expr) -> Expr:
+    """A sum or product made again from its parts, until that changes nothing.
+
+    SymPy's powers of numeric radicals are not settled at once: sqrt(2*sqrt(21/5))
+    comes with 5*sqrt(2) as one factor, sqrt(sqrt(8/5)) with 5**(1/4)*sqrt(5)
+    apart, so that their text would not read back to the same expression.
+    """
+    for _ in range(_SETTLING):
+        if not (expression.is_Add or expression.is_Mul):
+            break
+        again = expression.func(*expression.args)
+        if again == expression:
+            break
+        expression = again
+    return expression
+
+
 def _largest(children: list[Value]) -> tuple[float, int, float, int]:
     return (
         max(child.degree for child in children),
@@ -311,15 +350,15 @@ def _product_ball(children: list[Value], turned: list[bool]) -> arb | None:
     return total if total.is_finite() else bounds.unknown()
 
 
-def _absolute(argument: Expr, bars: int) -> Expr:
-    """|x|, without SymPy's expansion of x·x̄ for an argument it does not know to be real.
+def _folded(make: Callable[..., Expr], argument: Expr, bars: int) -> Expr:
+    """|x| or the sign of x, without evaluations that take minutes.
 
-    ``Abs`` expands the product of its argument with its conjugate, and asks
-    for the signs inside nested ones again at each level: 40 levels took 0.35 s,
-    100 took 32 s.
+    ``Abs`` expands the product of its argument with its conjugate when it does
+    not know it to be real, and both ask for the signs inside nested ones again
+    at each level: 40 levels took 0.35 s, 100 took 32 s.
     """
     if argument.is_Symbol or argument.is_Number:
-        return Abs(argument)
+        return make(argument)
     if bars <= LIMITS.bars and argument.is_extended_real:
-        return Abs(argument)
-    return Abs(argument, evaluate=False)
+        return make(argument)
+    return make(argument, evaluate=False)

@@ -48,4 +48,13 @@ def read_formula(
                 position=word.position,
                 code="too-many-names",
             )
-    return Builder(names, functions, pointer).build(parse(words, pointer)).expression
+    tree = parse(words, pointer)
+    try:
+        return Builder(names, functions, pointer).build(tree).expression
+    except RecursionError:
+        raise InputError(
+            "the formula is nested too deeply to be evaluated",
+            pointer=pointer,
+            position=tree.position,
+            code="too-deep",
+        ) from None

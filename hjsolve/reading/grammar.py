@@ -49,13 +49,19 @@ class _Level:
 
     opened: int
     call: Token | None = None
+    calls: int = 0
     arguments: list[Node] = field(default_factory=list)
     operands: list[Node] = field(default_factory=list)
     operators: list[_Operator] = field(default_factory=list)
 
 
-_RANK = {"+": 1, "-": 1, "*": 2, "/": 2, "**": 4}
-_SIGN_RANK = 3
+_RANK = {"+": 10, "-": 10, "*": 20, "/": 20, "**": 40}
+_LOOSE_SIGN, _TIGHT_SIGN = 15, 30
+"""A sign that opens a term applies to the whole product, -x*y = -(x*y).
+
+It is the same number, and SymPy does not multiply the sign into a first factor
+that is a sum.  After * / ** the sign must stay with its operand: a/-b*c.
+"""
 
 
 class _Parser:
@@ -105,7 +111,9 @@ class _Parser:
             self._open(word, None)
             return True
         if word.text in ("+", "-"):
-            self._push(_Operator("neg" if word.text == "-" else "pos", _SIGN_RANK, word.position))
+            loose = not level.operators or level.operators[-1].rank < _RANK["*"]
+            rank = _LOOSE_SIGN if loose else _TIGHT_SIGN
+            self._push(_Operator("neg" if word.text == "-" else "pos", rank, word.position))
             return True
         raise self._missing(word)
 
@@ -133,7 +141,13 @@ class _Parser:
             raise self._refuse(
                 f"more than {LIMITS.brackets} levels of brackets", bracket.position, "too-deep"
             )
-        self.levels.append(_Level(bracket.position, call))
+        calls = self.levels[-1].calls + (call is not None)
+        if call is not None and calls > LIMITS.calls:
+            # SymPy asks for the signs inside at every level: 100 nested tanh took 35 s.
+            raise self._refuse(
+                f"more than {LIMITS.calls} functions are nested here", call.position, "too-deep"
+            )
+        self.levels.append(_Level(bracket.position, call, calls))
 
     def _push(self, operator: _Operator) -> None:
         operators = self.levels[-1].operators

@@ -19,6 +19,7 @@ class Limits:
     Attributes:
         length: characters of one formula.
         brackets: levels of open brackets.
+        calls: functions nested in each other, V(x) and sqrt included.
         signs: signs or powers waiting for their operand in a row.
         name_length: characters of one name.
         names: names of one problem, all kinds together.
@@ -30,13 +31,14 @@ class Limits:
         exponent: size of a numeric exponent, and of nested ones multiplied.
         exponent_denominator: denominator of a rational exponent.
         tower: nested exponents that hold a variable.
-        bars: nested absolute values that are still simplified.
+        bars: nested functions that are still simplified.
         exponential: size of the constant argument of an exponential.
         argument_bits: size of the constant argument of any other function.
     """
 
     length: int = 50_000
     brackets: int = 120
+    calls: int = 8
     signs: int = 32
     name_length: int = 40
     names: int = 300
@@ -48,7 +50,7 @@ class Limits:
     exponent: int = 10_000
     exponent_denominator: int = 1_000_000
     tower: int = 3
-    bars: int = 10
+    bars: int = 4
     exponential: int = 1_000_000
     argument_bits: int = 64
 

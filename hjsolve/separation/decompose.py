@@ -16,7 +16,7 @@ from sympy import Add, Dummy, Expr, Mul, Pow, Rational, Symbol
 
 from hjsolve.algebra.generators import Generators, NotRational
 from hjsolve.algebra.identity import vanish
-from hjsolve.algebra.isolate import INVERSES, TWO_VALUED, inverse_power
+from hjsolve.algebra.isolate import INVERSES, TWO_VALUED, inverse_power, shows_sign
 from hjsolve.records import Truth
 from hjsolve.separation.momentum import Solved, from_carrier, solve_for
 from hjsolve.separation.staeckel import Block, leaves
@@ -42,6 +42,7 @@ class Pieces:
     equations: dict[Block, Expr] = field(default_factory=dict)
     constants: list[NewConstant] = field(default_factory=list)
     missing: list[Block] = field(default_factory=list)
+    valid: list[Expr] = field(default_factory=list)
 
 
 def decompose(
@@ -79,6 +80,8 @@ class _Decomposer:
         k, value = _strip(k, value, moving)
         undone = _undone(k, value)
         if undone is not None:
+            if shows_sign(k):
+                self.pieces.valid.append(value)
             self.run(*undone, blocks, [])
             return
         for parts, kind in self._splits(k, blocks, groups):
@@ -144,6 +147,7 @@ class _Decomposer:
             self.pieces.missing.extend(blocks)
             return
         put = {epsilon: value}
+        self.pieces.valid.extend(v.xreplace(put) for v in found.valid)
         for letter, integral in zip(letters, found.integrals, strict=True):
             integral = integral.xreplace({epsilon: k})
             self.pieces.constants.append(NewConstant(letter, "separation constant", integral))

@@ -9,7 +9,7 @@ here and is said to have none.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import sympy as sp
@@ -22,20 +22,32 @@ from hjsolve.records import Definition, SeparatedEquation
 
 @dataclass(frozen=True, slots=True)
 class Solved:
-    """p = drift + sign·root; ``squared`` is p² when drift is 0."""
+    """p = drift + sign·root; ``squared`` is p² when drift is 0.
+
+    It solves the equation where all of ``valid`` are ≥ 0.
+    """
 
     drift: Expr
     root: Expr
     squared: Expr | None
     where: tuple[Definition, ...] = ()
+    valid: tuple[Expr, ...] = ()
 
 
 def equation(
     coordinate: Symbol, momentum: Symbol, sign: Symbol, solved: Solved
 ) -> SeparatedEquation:
     """The record of a solved equation."""
+    conditions = (sp.Le(0, v, evaluate=False) for v in solved.valid if not v.is_nonnegative)
     return SeparatedEquation(
-        coordinate, momentum, sign, solved.drift, solved.root, solved.squared, solved.where
+        coordinate,
+        momentum,
+        sign,
+        solved.drift,
+        solved.root,
+        solved.squared,
+        solved.where,
+        tuple(dict.fromkeys(conditions)),
     )
 
 
@@ -77,11 +89,11 @@ def _isolated(k: Expr, value: Expr, p: Symbol) -> Solved | None:
     found = isolate(k, value, p)
     if found is None:
         return None
-    centre, half = found
+    centre, half = found.centre, found.half
     if half == 0:
-        return linear(centre)
+        return Solved(centre, sp.S.Zero, None, (), found.valid)
     whole = isinstance(half, Pow) and half.exp == Rational(1, 2) and centre == 0
-    return Solved(centre, half, half.base if whole else None)
+    return Solved(centre, half, half.base if whole else None, (), found.valid)
 
 
 # ------------------------------------------------ polynomials in p, or e^p
@@ -92,7 +104,7 @@ def _cleared(k: Expr, value: Expr, p: Symbol) -> Solved | None:
     try:
         ring = Generators([k, value], extra=(p,))
         difference = ring.ratio(k) - ring.ratio(value)
-        polynomial = clear_radicals(ring, difference.numerator, lambda g: g.has(p))
+        polynomial, shown = clear_radicals(ring, difference.numerator, lambda g: g.has(p))
     except (NotRational, ArithmeticError):
         return None
     carriers = [g for g in ring.items if g.has(p)]
@@ -103,7 +115,10 @@ def _cleared(k: Expr, value: Expr, p: Symbol) -> Solved | None:
         e: ring.polynomial(c)
         for e, c in coefficients(polynomial, ring.index[used[0]], ring.context).items()
     }
-    return from_carrier(parts, used[0], p)
+    solved = from_carrier(parts, used[0], p)
+    if solved is None or any(v.has(p) for v in shown):
+        return None
+    return replace(solved, valid=shown)
 
 
 def from_carrier(parts: dict[int, Expr], carrier: Expr, p: Symbol) -> Solved | None:
@@ -115,11 +130,17 @@ def from_carrier(parts: dict[int, Expr], carrier: Expr, p: Symbol) -> Solved | N
     return None
 
 
-def clear_radicals(ring: Generators, polynomial: Any, unwanted: Callable[[Expr], bool]) -> Any:
+def clear_radicals(
+    ring: Generators, polynomial: Any, unwanted: Callable[[Expr], bool]
+) -> tuple[Any, tuple[Expr, ...]]:
     """Multiply by conjugates until no unwanted square root is left.
+
+    Returns the polynomial and what must not be negative for its zeros to be
+    zeros of the polynomial given: from a + b·R = 0 with R ≥ 0, that −a/b ≥ 0.
 
     Raises NotRational for roots of higher degree.
     """
+    shown: list[Expr] = []
     for k, degree, power in reversed(ring.relations):
         g = ring.items[k]
         if not isinstance(g, Pow) or not unwanted(g):
@@ -136,7 +157,8 @@ def clear_radicals(ring: Generators, polynomial: Any, unwanted: Callable[[Expr],
         one = ring.context.constant(1)
         product = Ratio(a * a, one) - Ratio(b * b, one) * power
         polynomial = product.numerator
-    return polynomial
+        shown.append(ring.expression(-(Ratio(a, one) / Ratio(b, one))))
+    return polynomial, tuple(shown)
 
 
 def from_coefficients(parts: dict[int, Expr], p: Symbol) -> Solved | None:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import sympy as sp
 from sympy import Add, Dummy, Eq, Expr, Function, Mul, Symbol
@@ -11,7 +11,6 @@ from sympy import Add, Dummy, Eq, Expr, Function, Mul, Symbol
 from hjsolve.algebra.identity import vanish
 from hjsolve.records import (
     Constant,
-    Definition,
     Hamiltonian,
     ReducedEquation,
     SeparatedEquation,
@@ -212,8 +211,13 @@ class _Separator:
         self, pieces: Pieces, held: dict[Symbol, Symbol], rename: dict[Symbol, Symbol]
     ) -> tuple[SeparatedEquation, ...]:
         by_coordinate: dict[Symbol, Solved] = {}
+        moving = {*self.h.coordinates, *self.h.momenta}
+        if any(v.free_symbols & set(self.h.momenta) for v in pieces.valid):
+            return ()
         for block, solved in pieces.solved.items():
-            by_coordinate[block.coordinates[0]] = solved
+            others = moving - set(block.coordinates)
+            mine = tuple(v for v in pieces.valid if not v.free_symbols & others)
+            by_coordinate[block.coordinates[0]] = replace(solved, valid=solved.valid + mine)
         for q in self.h.coordinates:
             letter = held.get(self.momentum[q])
             if letter is not None:
@@ -319,13 +323,8 @@ def _renamed(solved: Solved, rename: dict[Symbol, Symbol]) -> Solved:
         solved.root.xreplace(rename),
         None if solved.squared is None else solved.squared.xreplace(rename),
         tuple(
-            Definition(
-                d.symbol,
-                d.definition,
-                None if d.root_of is None else d.root_of.xreplace(rename),
-                d.unknown,
-                d.index,
-            )
+            d if d.root_of is None else replace(d, root_of=d.root_of.xreplace(rename))
             for d in solved.where
         ),
+        tuple(v.xreplace(rename) for v in solved.valid),
     )

@@ -68,10 +68,15 @@ class Leaf:
 
 @dataclass(frozen=True, slots=True)
 class Leaves:
-    """All leaves of a group, and each constant's first integral in terms of ε and α."""
+    """All leaves of a group, and each constant's first integral in terms of ε and α.
+
+    The leaves are those of K = ε where all of ``valid`` are ≥ 0 (a root in K
+    was squared away).
+    """
 
     leaves: tuple[Leaf, ...]
     integrals: tuple[Expr, ...]
+    valid: tuple[Expr, ...]
 
 
 def leaves(
@@ -126,7 +131,7 @@ class _Group:
         self.frozen = self._base_point(offset)
         self._freeze_relations()
         whole = self.k.numerator - self.ring.generator(epsilon).numerator * self.k.denominator
-        self.whole = clear_radicals(self.ring, whole, self._ties)
+        self.whole, self.shown = clear_radicals(self.ring, whole, self._ties)
         if self._joint_left():
             raise NotRational("a kernel holds two blocks")
 
@@ -348,7 +353,7 @@ class _Group:
         for column in rest.values():
             self._shorten(column, vectors, entered)
         leaves = tuple(self._leaf(n, vectors, rest, names) for n in range(len(self.blocks)))
-        return Leaves(leaves, tuple(self._integrals(vectors, rest, energy)))
+        return Leaves(leaves, tuple(self._integrals(vectors, rest, energy)), self.shown)
 
     def _linear_energy(self, rest: dict[Exponents, Column]) -> Column | None:
         """The column of ε where ε enters to the first degree only, else None."""

@@ -16,6 +16,7 @@ from hjsolve.records import (
     CompleteIntegral,
     Definition,
     Formula,
+    Hamiltonian,
     Motion,
     Separation,
     Solution,
@@ -47,8 +48,10 @@ def outline(solution: Solution) -> list[Section]:
         _problem(solution),
         _constants(solution.separation),
         _separated(solution.separation),
-        _integral(solution.integral) if solution.integral else Section("Complete integral"),
-        _motion(solution.motion) if solution.motion else Section("Motion"),
+        _integral(solution.hamiltonian, solution.integral)
+        if solution.integral
+        else Section("Complete integral"),
+        _motion(solution, solution.motion) if solution.motion else Section("Motion"),
         Section("Certificate", [Line(_check(check)) for check in solution.certificate.checks]),
     ]
     return [section for section in sections if section.lines]
@@ -63,9 +66,17 @@ def _line(left: Expr | None, right: Formula, remark: str = "") -> Line:
     return Line(remark, formula, right.where, right.valid)
 
 
+def _letter(name: str, hamiltonian: Hamiltonian) -> Symbol:
+    """A letter of this outline, underscored when the problem uses it itself."""
+    taken = {symbol.name for symbol in hamiltonian.expression.free_symbols}
+    while name in taken:
+        name += "_"
+    return Symbol(name)
+
+
 def _problem(solution: Solution) -> Section:
     hamiltonian = solution.hamiltonian
-    lines = [Line("", _equal(Symbol("H"), hamiltonian.expression))]
+    lines = [Line("", _equal(_letter("H", hamiltonian), hamiltonian.expression))]
     if solution.integral is not None:
         lines.append(Line("Hamilton–Jacobi equation", solution.integral.equation))
     return Section("Problem", lines)
@@ -94,12 +105,16 @@ def _separated(separation: Separation) -> Section:
     return section
 
 
-def _integral(integral: CompleteIntegral) -> Section:
+def _integral(hamiltonian: Hamiltonian, integral: CompleteIntegral) -> Section:
     section = Section("Complete integral")
     if integral.principal is not None:
-        section.lines.append(_line(Symbol("S"), integral.principal, "principal function"))
+        section.lines.append(
+            _line(_letter("S", hamiltonian), integral.principal, "principal function")
+        )
     if integral.characteristic is not None:
-        section.lines.append(_line(Symbol("W"), integral.characteristic, "characteristic function"))
+        section.lines.append(
+            _line(_letter("W", hamiltonian), integral.characteristic, "characteristic function")
+        )
     for term in integral.terms:
         coordinate = term.equation.coordinate
         left = Function(f"W_{coordinate.name}")(coordinate)
@@ -117,12 +132,15 @@ def _integral(integral: CompleteIntegral) -> Section:
     return section
 
 
-def _motion(motion: Motion) -> Section:
+def _motion(solution: Solution, motion: Motion) -> Section:
     section = Section("Motion")
     section.lines.extend(
         _line(None, relation.equation, relation.says) for relation in motion.relations
     )
-    for symbol, formula in (*motion.coordinates, *motion.momenta):
+    hamiltonian = solution.hamiltonian
+    momentum = dict(zip(hamiltonian.coordinates, hamiltonian.momenta, strict=True))
+    momenta = [(momentum.get(symbol, symbol), formula) for symbol, formula in motion.momenta]
+    for symbol, formula in (*motion.coordinates, *momenta):
         if formula is not None:
             section.lines.append(_line(symbol, formula))
     return section

@@ -36,7 +36,8 @@ def verdict_sentences(solution: Solution) -> list[str]:
     if verdict.separability == "undecided":
         said.append(f"Undecided because of this limit: {verdict.limit or 'not recorded'}.")
     elif verdict.proof == "symbolic":
-        said.append(f"Proof: symbolic, with a chance of error below {max(verdict.bound, 0):.1g}.")
+        chance = f", with a chance of error below {verdict.bound:.1g}" if verdict.bound > 0 else ""
+        said.append(f"Proof: symbolic{chance}.")
     else:
         said.append(f"Proof: numeric; what counts as zero is below {verdict.bound:.1g}.")
     return said

@@ -64,7 +64,7 @@ def solution_document(solution: Solution, *, notations: Sequence[str] = DEFAULT)
             for reduced in separation.reduced
         ],
         "complete_integral": _integral(integral, write) if integral else None,
-        "motion": _motion(solution.motion, write) if solution.motion else None,
+        "motion": _motion(solution, solution.motion, write) if solution.motion else None,
         "certificate": _certificate(solution.certificate),
         **_form(separation),
     }
@@ -167,7 +167,10 @@ def family(term: Term) -> str:
     return max((part.family for part in parts), key=_ORDER.index, default="elementary")
 
 
-def _motion(motion: Motion, write: Write) -> dict[str, Any]:
+def _motion(solution: Solution, motion: Motion, write: Write) -> dict[str, Any]:
+    """Momenta stand under the names of their coordinates, whichever symbol the record has."""
+    hamiltonian = solution.hamiltonian
+    owner = dict(zip(hamiltonian.momenta, hamiltonian.coordinates, strict=True))
     return {
         "relations": [
             {
@@ -178,7 +181,7 @@ def _motion(motion: Motion, write: Write) -> dict[str, Any]:
             for relation in motion.relations
         ],
         "coordinates": {symbol.name: write(formula) for symbol, formula in motion.coordinates},
-        "momenta": {symbol.name: write(formula) for symbol, formula in motion.momenta},
+        "momenta": {owner.get(s, s).name: write(formula) for s, formula in motion.momenta},
     }
 
 

@@ -133,9 +133,7 @@ def _staeckel(rng: random.Random, names: list[str]) -> str:
             f"{row[0]}*({c})" for row, c in zip(matrix, cofactors, strict=True) if row[0] != "0"
         )
         if whole and all(_generic(x, names) for x in (*cofactors, whole)):
-            terms = (
-                f"{kinetic(rng, q)}*({c})" for q, c in zip(names, cofactors, strict=True)
-            )
+            terms = (f"{kinetic(rng, q)}*({c})" for q, c in zip(names, cofactors, strict=True))
             return f"({' + '.join(terms)})/({whole})"
 
 

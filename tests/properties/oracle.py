@@ -56,7 +56,10 @@ class Problem:
         values: dict[str, flint.fmpq] = {"": _rational(rng, -2, 2)}
         for name, kind in self.parameters.items():
             if isinstance(kind, int | float) or kind not in (
-                "positive", "negative", "nonzero", "real",
+                "positive",
+                "negative",
+                "nonzero",
+                "real",
             ):
                 values[name] = _constant(str(kind))
             else:
@@ -182,9 +185,9 @@ def _samples(problem: Problem, seed: int, count: int) -> list[tuple[np.ndarray, 
     raise Unclear("no regular points")
 
 
-def finest_partition(request: dict[str, Any], seed: int = 0, points: int = POINTS) -> set[
-    frozenset[str]
-]:
+def finest_partition(
+    request: dict[str, Any], seed: int = 0, points: int = POINTS
+) -> set[frozenset[str]]:
     """The finest partition of the coordinates over which the characteristic function splits."""
     problem = Problem(request)
     with flint.ctx.workprec(BITS):
@@ -197,9 +200,7 @@ def finest_partition(request: dict[str, Any], seed: int = 0, points: int = POINT
     return {frozenset(problem.pairs[i][0] for i in block) for block in blocks}
 
 
-def _merge(
-    samples: list[tuple[np.ndarray, np.ndarray]], count: int
-) -> list[frozenset[int]]:
+def _merge(samples: list[tuple[np.ndarray, np.ndarray]], count: int) -> list[frozenset[int]]:
     blocks = [frozenset([i]) for i in range(count)]
     while True:
         for a, b in itertools.combinations(blocks, 2):
@@ -233,3 +234,61 @@ def separability(partition: set[frozenset[str]]) -> str:
     if all(len(block) == 1 for block in partition):
         return "complete"
     return "none" if len(partition) == 1 else "partial"
+
+
+def frozen_equations_fit(request: dict[str, Any], seed: int = 0, tries: int = 3) -> bool:
+    """A finite test of complete separability that uses no second derivatives.
+
+    At a random base point (c, a) with E = H(c, a) every coordinate has its frozen equation
+    H(q_i, p_i; c, a) = E.  H separates only if momenta solved from those one by one satisfy
+    H(q, p) = E together, at coordinates a finite distance away.
+
+    Raises:
+        Unclear: Newton's method found no momentum, or the sum is neither tiny nor nonzero.
+    """
+    problem = Problem(request)
+    rng = random.Random(seed)
+    with flint.ctx.workprec(BITS):
+        cap, flint.ctx.cap = flint.ctx.cap, 3
+        try:
+            for _ in range(20 * tries):
+                try:
+                    return all(_fits(problem, rng) for _ in range(tries))
+                except (ValueError, ZeroDivisionError, Unclear):
+                    continue
+        finally:
+            flint.ctx.cap = cap
+    raise Unclear("no base point with momenta nearby")
+
+
+def _fits(problem: Problem, rng: random.Random) -> bool:
+    base, functions = problem.point(rng), problem.functions_at(rng)
+
+    def energy(values: dict[str, Any]) -> Any:
+        return evaluate(problem.tree, values, functions) + values[""]
+
+    level = flint.acb(energy(base))
+    together: dict[str, Any] = dict(base)
+    for q, p in problem.pairs:
+        alone: dict[str, Any] = dict(base)
+        alone[q] = base[q] + _rational(rng, -0.02, 0.02)
+        together[q] = alone[q]
+        together[p] = _newton(energy, alone, p, level)
+    miss = abs(flint.acb(energy(together)) - level)
+    if miss < TINY:
+        return True
+    if miss > TINY:
+        return False
+    raise Unclear("the energy is enclosed too widely")
+
+
+def _newton(energy: Any, values: dict[str, Any], p: str, level: flint.acb) -> flint.acb:
+    """The momentum near ``values[p]`` at which the energy is ``level``, to working precision."""
+    momentum = flint.acb(values[p])
+    for _ in range(60):
+        series = energy({**values, p: flint.acb_series([momentum, 1, 0])})
+        change = (flint.acb(series[0]) - level) / flint.acb(series[1])
+        momentum = flint.acb((momentum - change).real.mid(), (momentum - change).imag.mid())
+        if abs(change) < TINY * TINY:
+            return momentum
+    raise Unclear("Newton's method did not settle")

@@ -4,7 +4,7 @@ import flint
 import pytest
 from formula import evaluate, parse
 from generate import system
-from oracle import Unclear, finest_partition, separability, separates
+from oracle import Unclear, finest_partition, frozen_equations_fit, separability, separates
 
 SPHERICAL = {
     "coordinates": ["r", "theta", "phi"],
@@ -59,3 +59,11 @@ def test_the_reader_binds_as_the_contract_says() -> None:
 def test_generated_systems_repeat() -> None:
     assert system(7) == system(7)
     assert system(7) != system(8)
+
+
+@pytest.mark.parametrize("seed", range(40))
+def test_frozen_equations_agree_with_the_block_condition(seed: int) -> None:
+    """Two criteria that share only the reader: finite displacements and second derivatives."""
+    case = system(seed)
+    complete = separability(finest_partition(case.request, points=2)) == "complete"
+    assert frozen_equations_fit(case.request) == complete

@@ -3,32 +3,29 @@
 import json
 import sys
 from collections.abc import Iterator
-from pathlib import Path
-from typing import Any
 
 import mpmath
 import pytest
+from facts import FACTS, HERE
 
-HERE = Path(__file__).parent
 sys.path.insert(0, str(HERE.parent / "properties"))
-
-
-def rows(name: str) -> list[Any]:
-    """The entries of a file of facts as parameters; known failures are strict xfails."""
-    known = json.loads((HERE / "known_failures.json").read_text())
-    marked = []
-    for row in json.loads((HERE / f"{name}.json").read_text()):
-        reason = known.get(f"{name}:{row['id']}")
-        marks = [pytest.mark.xfail(reason=reason, strict=True)] if reason else []
-        marked.append(pytest.param(row, id=row["id"], marks=marks))
-    return marked
 
 
 def pytest_generate_tests(metafunc: pytest.Metafunc) -> None:
     """A test with an argument named after a file of facts gets one call an entry."""
-    for name in ("verdicts", "own_verdicts", "first_integrals", "complete_integrals", "motions"):
+    for name in FACTS:
         if name in metafunc.fixturenames:
-            metafunc.parametrize(name, rows(name))
+            rows = json.loads((HERE / f"{name}.json").read_text(encoding="utf-8"))
+            metafunc.parametrize(name, rows, ids=[row["id"] for row in rows])
+
+
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    """Entries of known_failures.json, ``test_file.py::test_name[id]``, are strict xfails."""
+    known = json.loads((HERE / "known_failures.json").read_text(encoding="utf-8"))
+    for item in items:
+        reason = known.get(f"{item.path.name}::{item.name}")
+        if reason and item.path.parent == HERE:
+            item.add_marker(pytest.mark.xfail(reason=reason, strict=True))
 
 
 @pytest.fixture

@@ -67,7 +67,8 @@ def _passes(
     points: Sequence[Sequence[mpmath.mpf]],
 ) -> bool:
     try:
-        betas = _newton(lambda b: mpmath.matrix(call(times[0], *b)) - mpmath.matrix(points[0]), start)
+        first = mpmath.matrix(points[0])
+        betas = _newton(lambda b: mpmath.matrix(call(times[0], *b)) - first, start)
         return all(
             abs(a - b) < CLOSE
             for time, point in zip(times, points, strict=True)
@@ -114,5 +115,3 @@ def _settled(formula: Formula, numbers: Mapping[str, mpmath.mpf]) -> sp.Expr:
             real = sorted(r for r in roots if abs(sp.im(r)) < 1e-25)
             expression = expression.subs(name.symbol, real[(name.index or 1) - 1])
     return expression
-
-

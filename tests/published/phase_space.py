@@ -30,9 +30,7 @@ def gradient(tree: Node, names: list[str], point: Values, functions: Any) -> lis
     for name in names:
         varied = {**point, name: flint.acb_series([flint.acb(point[name]), 1, 0])}
         series = evaluate(tree, varied, functions)
-        rows.append(
-            flint.acb(series[1]) if isinstance(series, flint.acb_series) else flint.acb(0)
-        )
+        rows.append(flint.acb(series[1]) if isinstance(series, flint.acb_series) else flint.acb(0))
     return rows
 
 

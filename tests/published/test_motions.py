@@ -3,13 +3,16 @@
 from typing import Any
 
 import flint
+import mpmath
 import pytest
+import sympy as sp
 from curve import as_number, runs_through
 from formula import evaluate
 from oracle import Problem
 from phase_space import TINY, gradient, number, tree_of
 
 from hjsolve.reading import read_problem
+from hjsolve.records import Formula
 from hjsolve.solve import solve
 
 
@@ -61,7 +64,19 @@ def test_the_solver_runs_through_it(motions: dict[str, Any]) -> None:
         for constant in solution.separation.constants:
             tree = tree_of(constant.first_integral, [])
             known[str(constant.symbol)] = evaluate(tree, states[0], {})
+        known.pop(problem.time)
         numbers = {name: as_number(value) for name, value in known.items()}
         paths = [[as_number(s[q]) for q in motions["coordinates"]] for s in states]
-    times = [as_number(time) for time in moments]
+        times = [as_number(time) for time in moments]
     assert runs_through(formulas, numbers, solution.hamiltonian.time, times, paths)
+
+
+@pytest.mark.usefixtures("forty_digits")
+def test_a_curve_that_misses_is_noticed() -> None:
+    time, beta = sp.Symbol("t", real=True), sp.Symbol("beta_1", real=True)
+    curve = [Formula(sp.sin(3 * (time + beta)))]
+    times = [mpmath.mpf(k) / 10 for k in range(3)]
+    hit = [[mpmath.sin(3 * t + 1)] for t in times]
+    near = [[x[0] * (1 + mpmath.mpf(10) ** -12)] for x in hit]
+    assert runs_through(curve, {}, time, times, hit)
+    assert not runs_through(curve, {}, time, times, near)

@@ -10,6 +10,8 @@ from api.jobs import worker
 from hjsolve.errors import Fault, InputError
 from hjsolve.records import Separation, Solution, Verdict
 
+DIRECTORY = tempfile.gettempdir()  # found by writing a file, which a worker may not
+
 
 def hang():
     """Never returns from C, and never looks at signals."""
@@ -28,7 +30,7 @@ def swell():
 
 
 def write():
-    descriptor, path = tempfile.mkstemp(dir="/tmp")
+    descriptor, path = tempfile.mkstemp(dir=DIRECTORY)
     os.unlink(path)
     os.write(descriptor, b"x")
 

@@ -31,7 +31,12 @@ def test_the_samples_are_there():
 
 @pytest.mark.parametrize("sample", SAMPLES, ids=[sample.stem for sample in SAMPLES])
 def test_a_sample_is_solved(service, sample):
-    response = service.post(json.loads(sample.read_text("utf-8")), prefer="wait=25")
+    problem = json.loads(sample.read_text("utf-8"))
+    response = service.post(problem, prefer="wait=25")
+    if problem.get("charts", "as-given") != "as-given":
+        assert response.status_code == 422  # until there is a search
+        assert response.json()["pointer"] == "/charts"
+        return
     assert response.status_code == 200
     answer = response.json()
     assert answer["state"] == "finished", answer.get("problem_detail")

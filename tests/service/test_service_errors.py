@@ -2,6 +2,7 @@
 
 import json
 import re
+import socket
 
 import pytest
 from running import ROOT
@@ -175,6 +176,15 @@ def test_a_body_too_large_without_a_length(service):
     assert_problem(service.client.post("/v1/solutions", content=chunks), 413)
 
 
+def test_a_client_that_leaves_in_the_middle_of_its_body(service):
+    head = b"POST /v1/solutions HTTP/1.1\r\nHost: x\r\nContent-Length: 1000\r\n\r\n{"
+    with socket.create_connection(("127.0.0.1", service.port)) as connection:
+        connection.sendall(head)
+    assert service.client.get("/healthz").status_code == 200
+    assert service.post(OSCILLATOR).status_code in (200, 202)
+    assert "Traceback" not in service.log.read_text()
+
+
 @pytest.mark.parametrize(
     ("method", "path", "status"),
     [
@@ -248,7 +258,9 @@ def test_hostile_formulas(service, case):
         assert response.status_code in (202, 422)
     if response.status_code == 202:
         name = response.json()["id"]
-        assert service.client.delete(f"/v1/solutions/{name}").status_code == 200
+        deleted = service.client.delete(f"/v1/solutions/{name}")
+        assert deleted.status_code == 200
+        assert deleted.elapsed.total_seconds() < 1
     alive = service.client.get("/healthz")
     assert alive.status_code == 200
     assert alive.elapsed.total_seconds() < 0.5

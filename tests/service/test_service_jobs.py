@@ -131,6 +131,14 @@ def test_delete_ends_a_running_job_and_keeps_what_was_found(odd_service):
     assert odd_service.get(name)["state"] == "cancelled"
 
 
+def test_delete_at_once_is_never_lost(odd_service):
+    for _ in range(30):
+        name = odd_service.post(odd("hang"), prefer="respond-async").json()["id"]
+        deleted = odd_service.client.delete(f"/v1/solutions/{name}")
+        assert deleted.json()["state"] == "cancelled"
+        assert deleted.elapsed.total_seconds() < 0.5
+
+
 def test_delete_of_an_ended_job_changes_nothing(odd_service):
     answer = odd_service.post(odd("quick")).json()
     deleted = odd_service.client.delete(f"/v1/solutions/{answer['id']}")

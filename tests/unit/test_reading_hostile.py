@@ -39,7 +39,7 @@ def problem(text: str) -> dict[str, object]:
 def test_hostile(case: dict[str, str]) -> None:
     text = case["hamiltonian"]
     request = problem(text)
-    begun = time.perf_counter()
+    begun = time.process_time()
     if case["expect"] == "reject":
         with pytest.raises(InputError) as refusal:
             read_problem(request)
@@ -55,4 +55,4 @@ def test_hostile(case: dict[str, str]) -> None:
         assert isinstance(expression, Expr)
         assert not expression.has(zoo, nan, oo, I)
         assert Symbol("p", real=True) in expression.free_symbols
-    assert time.perf_counter() - begun < SLOWEST
+    assert time.process_time() - begun < SLOWEST

@@ -16,9 +16,10 @@ from hjsolve.writing.registry import writer
 from hjsolve.writing.tex import latex_name, write_latex
 
 NAMES = {
-    n: Symbol(n, real=True) for n in "x y u m E I beta k p_theta alpha_1 sigma_r lambda θ".split()
+    n: Symbol(n, real=True)
+    for n in ("x", "y", "u", "m", "E", "I", "beta", "k", "p_theta", "alpha_1", "lambda", "θ")
 }
-x, y, u, m = (NAMES[n] for n in "x y u m".split())
+x, y, u, m = (NAMES[n] for n in ("x", "y", "u", "m"))
 V = Function("V")
 
 
@@ -49,7 +50,7 @@ def test_examples(entry: Notation) -> None:
         ("x^(-3/2)", "1/x**(3/2)"),
         ("(x + y)^2", "(x + y)**2"),
         ("(-x)^y", "(-x)**y"),
-        ("x^(y*u)", "x**(y*u)"),
+        ("x^(y*u)", "x**(u*y)"),
         ("(x^y)^(1/3)", "(x**y)**(1/3)"),
         ("-3/7", "-3/7"),
         ("exp(1)", "exp(1)"),
@@ -143,10 +144,10 @@ def test_formula_object() -> None:
         "latex": "e_{2} + k_{1} x",
         "where": [
             {"name": "k_1", "definition": "sqrt(m)"},
-            {"name": "e_2", "root_of": "u**3 + 1 - u*m", "in": "u", "index": 2},
+            {"name": "e_2", "root_of": "u**3 - m*u + 1", "in": "u", "index": 2},
         ],
         "valid": ["0 < m", "e_2 < x"],
-    } or formula_object(formula)["where"][1]["root_of"] in ("u**3 - m*u + 1",)
+    }
     assert list(formula_object(x, ("latex",))) == ["latex"]
     assert list(formula_object(x, ("infix", "latex", "mathml"))) == ["infix", "latex", "mathml"]
     with pytest.raises(KeyError):
@@ -154,7 +155,7 @@ def test_formula_object() -> None:
 
 
 def test_deep_formulas_can_be_written() -> None:
-    text = "".join("sin(1-x/" for _ in range(100)) + "y" + ")" * 100
+    text = "1/(1-x/(" * 50 + "y" + "))" * 50
     expression = read(text)
     for _ in range(40):
         expression = exp(Rational(1, 2) + x * expression)

@@ -1,0 +1,177 @@
+"""Points of a regime: where its conditions hold and the integrand is real."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from sympy import Expr, Symbol
+from sympy.core.relational import Relational
+
+from hjsolve.algebra.balls import BallWalk, Imprecise, NotSupported, OutsideDomain, precision
+from hjsolve.algebra.graph import Graph
+from hjsolve.records import Domain
+
+Floats = NDArray[np.float64]
+
+KEPT = 12
+"""Points kept of a regime."""
+
+DRAWS = 6_000
+"""Points drawn at once."""
+
+SPREADS = (1.5, 4.0, 20.0, 90.0)
+"""Natural logarithms by which sizes vary, round by round.
+
+Problems with the constants of nature put in have solutions at sizes far from 1.
+"""
+
+BITS = 192
+
+
+@dataclass(frozen=True)
+class Sample:
+    """Points of a regime: a value for each symbol, the variable among them."""
+
+    symbols: tuple[Symbol, ...]
+    values: Floats
+
+    def exact(self, i: int) -> dict[Symbol, Fraction]:
+        """The i-th point as rational numbers."""
+        return {s: Fraction(float(v)) for s, v in zip(self.symbols, self.values[:, i], strict=True)}
+
+
+def floats(graph: Graph, values: dict[Symbol, Floats]) -> list[Floats]:
+    """The roots of a graph at many points at once; nan where not real.
+
+    Raises NotSupported for a function without a floating-point form here.
+    """
+    out: list[Any] = []
+    with np.errstate(all="ignore"):
+        for node in graph.nodes:
+            a = [out[k] for k in node.args]
+            out.append(_operation(node.op, node.payload, a, values))
+        size = len(next(iter(values.values())))
+        return [np.broadcast_to(np.asarray(out[r], dtype=float), (size,)) for r in graph.roots]
+
+
+def _operation(op: str, payload: Any, a: list[Any], values: dict[Symbol, Floats]) -> Any:
+    match op:
+        case "number":
+            return payload[0] / payload[1]
+        case "pi":
+            return np.pi
+        case "symbol":
+            return values[payload]
+        case "add":
+            return sum(a)
+        case "mul":
+            product = a[0]
+            for factor in a[1:]:
+                product = product * factor
+            return product
+        case "power":
+            n, d = payload
+            return np.asarray(a[0], dtype=float) ** (n if d == 1 else n / d)
+        case "asin":
+            return np.arcsin(a[0])
+        case "atan":
+            return np.arctan(a[0])
+        case "atan2":
+            return np.arctan2(a[0], a[1])
+        case "exp" | "log" | "sin" | "cos" | "abs" | "sign":
+            return getattr(np, op)(a[0])
+    raise NotSupported(op)
+
+
+def sample(
+    integrand: Expr,
+    variable: Symbol,
+    domain: Domain,
+    valid: Sequence[Relational],
+    seed: int = 0,
+) -> Sample | None:
+    """Up to KEPT points that satisfy ``valid`` and at which the integrand is real.
+
+    None when none was found.  Raises TypeError, NotSupported, TooLarge when the
+    integrand has parts that cannot be evaluated.
+    """
+    bounds = [b for b in (domain.lower, domain.upper) if b.is_finite]
+    roots = [integrand, *(side for r in valid for side in (r.lts, r.gts)), *bounds]
+    graph = Graph(roots)
+    names = {n.payload for n in graph.nodes if n.op == "symbol"} | {variable}
+    symbols = tuple(sorted(names, key=lambda s: s.name))
+    rng = np.random.default_rng(0xA11CE + seed)
+    for spread in SPREADS:
+        values = {s: _draw(s, rng, spread) for s in symbols}
+        values[variable] = _draw_variable(variable, domain, values, rng, spread)
+        numbers = floats(graph, values)
+        good = np.isfinite(numbers[0])
+        for k in range(len(valid)):
+            below, above = numbers[1 + 2 * k], numbers[2 + 2 * k]
+            good &= below < above if not valid[k].rel_op.endswith("=") else below <= above
+        found = Sample(symbols, np.array([values[s][good] for s in symbols]))
+        kept = [
+            i
+            for i in range(min(3 * KEPT, found.values.shape[1]))
+            if _inside(graph, found.exact(i), valid)
+        ]
+        if kept:
+            return Sample(symbols, found.values[:, kept[:KEPT]])
+    return None
+
+
+def _inside(graph: Graph, point: dict[Symbol, Fraction], valid: Sequence[Relational]) -> bool:
+    """Whether balls confirm that the integrand is real and the conditions hold.
+
+    Floating point alone lets points of very unequal sizes in by rounding.
+    """
+    with precision(BITS):
+        try:
+            values = [jet.value for jet in BallWalk(graph, point, {}).run()]
+        except (Imprecise, OutsideDomain):
+            return False
+        return all(
+            values[1 + 2 * k] < values[2 + 2 * k]
+            if not relation.rel_op.endswith("=")
+            else not values[1 + 2 * k] > values[2 + 2 * k]
+            for k, relation in enumerate(valid)
+        )
+
+
+def _draw(symbol: Symbol, rng: np.random.Generator, spread: float) -> Floats:
+    size = np.exp(rng.uniform(-spread, spread, DRAWS))
+    if symbol.is_positive:
+        return size
+    if symbol.is_negative:
+        return -size
+    return size * rng.choice((-1.0, 1.0), DRAWS)
+
+
+def _draw_variable(
+    variable: Symbol,
+    domain: Domain,
+    values: dict[Symbol, Floats],
+    rng: np.random.Generator,
+    spread: float,
+) -> Floats:
+    free = dict(values)
+    free.setdefault(variable, np.ones(DRAWS))
+    ends: list[Floats | None] = []
+    for end in (domain.lower, domain.upper):
+        ends.append(floats(Graph([end]), free)[0] if end.is_finite else None)
+    lower, upper = ends
+    if lower is not None and upper is not None:
+        return lower + (upper - lower) * rng.uniform(0.02, 0.98, DRAWS)
+    size = np.exp(rng.uniform(-spread, spread, DRAWS))
+    if lower is not None:
+        return lower + size
+    if upper is not None:
+        return upper - size
+    if variable.is_positive:
+        return size
+    return size * rng.choice((-1.0, 1.0), DRAWS)
