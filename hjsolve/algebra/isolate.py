@@ -40,7 +40,9 @@ def isolate(k: Expr, value: Expr, x: Symbol) -> Isolated | None:
             if isinstance(k, Mul):
                 half = spread(half, k.as_independent(x, as_Add=False)[0])
         elif both:
-            undone, half = sp.S.Zero, undone
+            # sin u = sin(π − u): its two values lie about π/2, those of the others about 0
+            middle = sp.pi / 2 if isinstance(k, sp.sin) else sp.S.Zero
+            undone, half = middle, undone
         k, value = inner, undone
     return Isolated(value, half, tuple(valid))
 
@@ -103,6 +105,7 @@ INVERSES = {
 TWO_VALUED = {
     sp.cosh: sp.acosh,
     sp.cos: sp.acos,
+    sp.sin: sp.acos,
     sp.Abs: lambda v: v,
 }
-"""Even functions: both signs of the argument give the value."""
+"""Functions that take a value at two arguments, centre ± this."""

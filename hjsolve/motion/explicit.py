@@ -17,10 +17,12 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import sympy as sp
-from sympy import Add, Expr, Matrix, Mul, Symbol
+from sympy import Add, Dummy, Expr, Matrix, Mul, Symbol
 from sympy.core.relational import Relational
+from sympy.integrals.manualintegrate import manualintegrate
 
 from hjsolve.algebra.identity import vanish
+from hjsolve.algebra.roots import unify_roots
 from hjsolve.motion.inversions import invert
 from hjsolve.records import (
     Antiderivative,
@@ -140,7 +142,7 @@ class _Explicit:
         q = e.coordinate
         phase = Add(*(c * self.phases[a] for c, a in zip(weights, self.alphas, strict=True)))
         drift = Add(*(c * sp.diff(e.drift, a) for c, a in zip(weights, self.alphas, strict=True)))
-        tau = sp.Dummy("tau", real=True)
+        tau = Dummy("tau", real=True)
         if e.root == 0:
             speed, integrand = sp.S.One, sp.simplify(drift)
         else:
@@ -151,9 +153,9 @@ class _Explicit:
             integrand = speed / e.root
         anti = self.integrate(integrand, q, self.domain[q])
         for form in anti.closed_forms:
-            path = invert(form.expression, q, tau, self.domain[q])
+            valid = tuple(dict.fromkeys((*form.valid, *e.valid)))
+            path = invert(form.expression, q, tau, self.domain[q], valid)
             if path is not None and not form.where:
-                valid = tuple(dict.fromkeys((*form.valid, *e.valid)))
                 return Parametrised(e, tau, path, speed, phase, form.expression, valid)
         return None
 
@@ -212,7 +214,7 @@ class _Explicit:
         if form is None:
             return None
         start = form.expression.xreplace({q: leader.path}).subs(leader.tau, 0)
-        offset = sp.simplify(start - smooth.subs(leader.tau, 0))
+        offset = sp.simplify(unify_roots(start - smooth.subs(leader.tau, 0)))
         if offset.has(sp.nan, sp.zoo, sp.oo):
             return None
         sign = leader.equation.sign if not _turns(leader.path, leader.tau) else sp.S.One
@@ -254,7 +256,17 @@ def _smooth_antiderivative(rate: Expr, tau: Symbol) -> Expr | None:
                 return None
             if base != tau and sp.diff(base.args[0], tau, 2) != 0:
                 return None
-    result = sp.integrals.manualintegrate.manualintegrate(rate, tau)
+    # a frequency that might be zero would make SymPy answer by cases
+    inner = {sp.diff(f.args[0], tau) for f in rate.atoms(*allowed)} - {sp.S.Zero}
+    letters = {w: Dummy("w", positive=True) for w in inner if not w.is_nonzero}
+    put = {
+        f: f.func(letters[w] * tau + f.args[0].subs(tau, 0))
+        for f in rate.atoms(*allowed)
+        for w in [sp.diff(f.args[0], tau)]
+        if w in letters
+    }
+    result = manualintegrate(rate.xreplace(put), tau)
+    result = result.xreplace({letter: w for w, letter in letters.items()})
     if result.has(sp.Integral):
         return None
     return result if vanish([sp.diff(result, tau) - rate])[0].truth is Truth.PROVED else None

@@ -52,7 +52,7 @@ def cost(reduction: Reduction, signs: Signs) -> float:
             continue
         if d == 1 or (d == 2 and not _tractable(reduction, pole, signs)):
             return INFINITE
-        total += 1.25 * sum(1 for c in pole.numerator if c)
+        total += (1.0 if d == 0 else 1.25) * sum(1 for c in pole.numerator if c)
     return total
 
 

@@ -11,7 +11,7 @@ from collections.abc import Callable, Collection, Mapping
 from dataclasses import replace
 
 from flint import arb
-from sympy import Abs, Add, Expr, Function, Integer, Mul, Pow, S, pi, sign
+from sympy import Abs, Add, Expr, Function, Integer, Mul, Pow, S, gamma, pi, sign
 
 from hjsolve.errors import InputError
 from hjsolve.reading import bounds
@@ -166,6 +166,9 @@ class Builder:
         else:
             bars += 1
             expression = known.make(*arguments)
+            if constant and expression.has(gamma):
+                # elliptic_k(1/2) becomes Γ(-1/4), which the grammar does not have.
+                expression = known.make(*arguments, evaluate=False)
         ball = bounds.call_ball(name, balls) if constant and known else None
         return Value(expression, ball, degree, tower, grown, bars)
 
