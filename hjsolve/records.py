@@ -167,7 +167,7 @@ class SeparatedEquation:
 
     @property
     def solution(self) -> Expr:
-        """p on the branch named by ``sign``."""
+        """The momentum on the branch named by ``sign``."""
         return self.drift + self.sign * self.root
 
 

@@ -93,6 +93,7 @@ class Generators:
 
     def __init__(self, expressions: Sequence[Expr], extra: Sequence[Symbol] = ()) -> None:
         """Find the generators of ``expressions``; ``extra`` symbols come first."""
+        self._expressions = expressions
         self._common: dict[tuple[str, Expr], int] = {}
         self._roots: dict[Expr, int] = {}
         self.items: list[Expr] = list(extra)
@@ -156,11 +157,20 @@ class Generators:
         one = self.number(1)
         for k, g in enumerate(self.items):
             if isinstance(g, sp.cos):
-                s = self.gens[self.index[sp.sin(g.args[0])]]
-                found.append((k, 2, one - Ratio(s * s, one.denominator)))
+                # keep the one that occurs in odd powers: reduced by the other's square,
+                # cosh² − cos² would no longer show its factor cosh + cos
+                kept = self.index[sp.sin(g.args[0])]
+                k, kept = (kept, k) if self._is_even(self.items[kept], g) else (k, kept)
+                square = Ratio(self.gens[kept] ** 2, one.denominator)
+                found.append((k, 2, one - square))
             elif isinstance(g, Pow) and isinstance(g.exp, Rational) and g.exp.p == 1:
                 found.append((k, int(g.exp.q), self.ratio(g.base)))
         return found
+
+    def _is_even(self, s: Expr, c: Expr) -> bool:
+        """Whether s enters in even powers only and c does not."""
+        even = [all(e.xreplace({g: -g}) == e for e in self._expressions) for g in (s, c)]
+        return even == [True, False]
 
     # ------------------------------------------------------------- way in
 
@@ -299,7 +309,15 @@ class Generators:
         if len(polynomial) == 1:
             return self.polynomial(polynomial)
         content, parts = polynomial.factor()
-        return Mul(sp.Integer(int(content)), *(self.polynomial(f) ** int(m) for f, m in parts))
+        powers = {self.polynomial(f): int(m) for f, m in parts}
+        for c in [g for g in self.items if isinstance(g, sp.cos)]:
+            both = min(powers.get(c - 1, 0), powers.get(c + 1, 0))
+            if both:  # (c − 1)(c + 1) = −s²
+                powers[c - 1] -= both
+                powers[c + 1] -= both
+                powers[sp.sin(c.args[0])] = powers.get(sp.sin(c.args[0]), 0) + 2 * both
+                content = content * (-1) ** both
+        return Mul(sp.Integer(int(content)), *(f**m for f, m in powers.items()))
 
 
 def coefficients(polynomial: Any, k: int, context: Any) -> dict[int, Any]:

@@ -41,7 +41,9 @@ def unify_roots(expression: Expr, positive: Collection[Expr] = ()) -> Expr:
         sole for factors in factored.values() if factors for sole in [_sole(factors)] if sole
     } | set(positive)
     put = {
-        p: _unified(factors, known, positive) ** p.exp.p for p, factors in factored.items() if factors
+        p: _unified(factors, known, positive) ** p.exp.p
+        for p, factors in factored.items()
+        if factors
     }
     expression = expression.xreplace(put)
     sizes = {sp.Abs(f): f for f in positive} | {sp.Abs(-f): f for f in positive}
@@ -72,9 +74,7 @@ def _sole(factors: list[tuple[Expr, int]]) -> Expr | None:
 
 
 def _half_powers(expression: Expr) -> list[Pow]:
-    found = [
-        p for p in expression.atoms(Pow) if isinstance(p.exp, Rational) and p.exp.q == 2
-    ]
+    found = [p for p in expression.atoms(Pow) if isinstance(p.exp, Rational) and p.exp.q == 2]
     return sorted(found, key=lambda e: -e.count_ops())
 
 
@@ -95,9 +95,7 @@ def _factored(base: Expr) -> list[tuple[Expr, int]] | None:
     return found
 
 
-def _unified(
-    factors: list[tuple[Expr, int]], known: set[Expr], positive: Collection[Expr]
-) -> Expr:
+def _unified(factors: list[tuple[Expr, int]], known: set[Expr], positive: Collection[Expr]) -> Expr:
     sign, odd = _odd(factors)
     outside: Expr = sp.S.One
     for factor, times in factors:

@@ -204,7 +204,9 @@ def _differentiated(
         sp.sin(c) for c, d in zip(h.coordinates, h.domains, strict=True) if d.kind == "polar-angle"
     ]
     for signs in product((1, -1), repeat=min(len(free), 2)):
-        case = {s: sign * Dummy(s.name, positive=True) for s, sign in zip(free, signs, strict=False)}
+        case = {
+            s: sign * Dummy(s.name, positive=True) for s, sign in zip(free, signs, strict=False)
+        }
         antiderivative, integrand = whole.xreplace(case)
         antiderivative = antiderivative.replace(sp.acosh, _acosh).replace(sp.log, _log)
         residue = sp.diff(antiderivative, q) - integrand

@@ -115,7 +115,7 @@ class _Explicit:
             return [sp.S.One] + [sp.S.Zero] * (len(self.alphas) - 1)
         if any(x.has(sp.nan, sp.zoo) for row in others for x in row):
             return None
-        for vector in Matrix(others).nullspace(simplify=True):
+        for vector in Matrix(others).nullspace(simplify=sp.cancel):
             weights = list(vector)
             own = [
                 Add(*(c * x for c, x in zip(weights, row, strict=True)))

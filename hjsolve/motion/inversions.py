@@ -43,9 +43,11 @@ def _single(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     if found is None:
         return ()
     candidates = _about(found.centre, found.half)
-    return tuple(sp.expand(c.replace(sp.acos, _through_asin)) for c in candidates) if (
-        found.centre.has(sp.pi)
-    ) else candidates
+    return (
+        tuple(sp.expand(c.replace(sp.acos, _through_asin)) for c in candidates)
+        if (found.centre.has(sp.pi))
+        else candidates
+    )
 
 
 def _through_asin(v: Expr) -> Expr:

@@ -14,6 +14,7 @@ from sympy.core.function import AppliedUndef
 from hjsolve.algebra.budget import limit
 from hjsolve.errors import OutOfTime
 from hjsolve.quadrature.family import Family
+from hjsolve.quadrature.folded import FOLDED
 from hjsolve.quadrature.plain import PLAIN
 from hjsolve.quadrature.problem import SIZE_LIMIT, Problem, size
 from hjsolve.quadrature.radical import RADICAL
@@ -25,6 +26,7 @@ from hjsolve.records import Antiderivative, Domain, Formula
 FAMILIES: tuple[Family, ...] = (
     RATIONAL,
     RADICAL,
+    FOLDED,
     PLAIN,
     UNEVALUATED,
 )

@@ -28,6 +28,9 @@ WANTED = 3
 
 DIGITS = 30
 
+STEEP = 4.0
+"""A step this many times larger than the integrand allows for is looked at closely."""
+
 PATHS = 3
 """Points whose neighbourhood is searched for jumps."""
 
@@ -95,14 +98,19 @@ def _continuous(
     point without a finite value, is looked at again in balls.
     """
     grid = _neighbourhood(graph, point, variable, domain)
-    values = _along(graph, point, variable, grid)[0]
+    values, slopes = _along(graph, point, variable, grid)
     finite = np.flatnonzero(np.isfinite(values))
     if len(finite) < 3:
         return True
+    left, right = finite[:-1], finite[1:]
     steps = np.abs(np.diff(values[finite]))
     size = np.ptp(values[finite])
-    doubtful = [(finite[k], finite[k + 1]) for k in np.argsort(steps)[-3:]]
-    doubtful += [(a, b) for a, b in pairwise(finite) if b > a + 1]
+    slope = np.maximum(np.abs(slopes[left]), np.abs(slopes[right]))
+    steep = steps > STEEP * slope * np.diff(grid[finite]) + 1e-9 * size
+    steep[np.argmax(steps)] = True
+    doubtful = [(left[k], right[k]) for k in np.flatnonzero(steep | (right > left + 1))]
+    if len(doubtful) > len(grid) // 4:
+        return False
     for a, b in doubtful:
         suspect = b > a + 1 or (
             _shrunk(graph, point, variable, grid[a], grid[b]) > 0.05 * abs(values[b] - values[a])

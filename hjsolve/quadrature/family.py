@@ -76,6 +76,8 @@ def algebraic(
     priced = [(r.cost(cost), i, r) for i, r in enumerate(problem.readings())]
     ranked = sorted((c, i, r) for c, i, r in priced if c < float("inf"))
     reason: GivenUp | None = None
+    if ranked:
+        reason = GivenUp("no point of the domain was found at which the integrand is real")
     for _, _, reading in ranked[:READINGS_TRIED]:
         try:
             found, borders = _checked(problem, reading, formula, terms)

@@ -153,12 +153,13 @@ def _j0(reduction: Reduction, root: Expr, context: Context) -> Expr:
     sign = signs.of(p[2], first=-1)
     if sign < 0:
         signs.suppose(disc, 1)
-        return -dress.product((w, 1), (p[2], -HALF)) * asin(dress.product((line, 1), (disc, -HALF)))
-    weight = dress.product((w, 1), (p[2], -HALF))
-    if not disc:
+        part = -asin(dress.product((line, 1), (disc, -HALF)))
+    elif not disc:
         side = signs.of(line)
-        return side * weight * log(side * dress.ratio(line))
-    return weight * _increasing(disc, line, p[2], root, context)
+        part = side * log(side * dress.ratio(line))
+    else:
+        part = _increasing(disc, line, p[2], root, context)
+    return dress.product((w, 1), (p[2], -HALF), times=(part,))
 
 
 def _increasing(disc: Ratio, line: Ratio, lead: Ratio, root: Expr, context: Context) -> Expr:
@@ -182,27 +183,30 @@ def _simple_pole(reduction: Reduction, pole: Pole, root: Expr, context: Context)
     here, slope = uv.value(p, c), uv.value(uv.derivative(p), c)
     disc, distance = _discriminant(p), ring.u - c
     sign = signs.of(here, first=-1)
-    weight = dress.product((n, 1), (here, -HALF))
+
+    def weighted(part: Expr) -> Expr:
+        return dress.product((n, 1), (here, -HALF), times=(part,))
+
     line = slope * distance + here * ring.number(2)
     if sign < 0:
         signs.suppose(disc, 1)
         side = signs.maybe(distance)
         if side is None:
             ratio = dress.product((line, 1), (here, -HALF)) / (2 * root)
-            return weight * atan(ratio)
-        return side * weight * asin(_in_inverse(slope, here, c, disc, context))
+            return weighted(atan(ratio))
+        return weighted(side * asin(_in_inverse(slope, here, c, disc, context)))
     over = line / distance
     if context.only and disc:
         side = signs.of(distance)
         if signs.of(disc, first=1) < 0:
-            return -side * weight * asinh(_in_inverse(slope, here, c, disc, context))
+            return weighted(-side * asinh(_in_inverse(slope, here, c, disc, context)))
         branch = signs.of(over)
         argument = branch * _in_inverse(slope, here, c, disc, context)
-        return -side * branch * weight * acosh(argument)
+        return weighted(-side * branch * acosh(argument))
     half = ring.number(2).inverse()
     inside = (dress.product((line * half, 1), (here, -HALF)) + root) / dress.ratio(distance)
     positive = signs.maybe(line) == 1 and signs.maybe(distance) == 1
-    return -weight * (log(inside) if positive else log(Abs(inside)))
+    return weighted(-log(inside) if positive else -log(Abs(inside)))
 
 
 def _in_inverse(slope: Ratio, here: Ratio, c: Ratio, disc: Ratio, context: Context) -> Expr:
@@ -233,17 +237,20 @@ def _over_root(
     """
     signs, dress = context.signs, context.dress
     sign = signs.of(here, first=-1)
-    weight = dress.product((n, 1), (here, -HALF))
+
+    def weighted(part: Expr) -> Expr:
+        return dress.product((n, 1), (here, -HALF), times=(part,))
+
     at_pole = dress.product((here, HALF))
     if sign < 0:
-        return weight * atan(root / at_pole)
+        return weighted(atan(root / at_pole))
     above = signs.maybe(slope * distance)
     if above is not None and context.only:
         inverse = dress.product((here, HALF), (slope * distance, -HALF))
-        return -weight * (asinh(inverse) if above > 0 else acosh(inverse))
+        return weighted(-asinh(inverse) if above > 0 else -acosh(inverse))
     if signs.maybe(distance) is None:
-        return -weight / 2 * log((root + at_pole) ** 2 / Abs(dress.ratio(distance)))
-    return -weight * log((root + at_pole) / dress.product((distance, HALF)))
+        return weighted(-log((root + at_pole) ** 2 / Abs(dress.ratio(distance))) / 2)
+    return weighted(-log((root + at_pole) / dress.product((distance, HALF))))
 
 
 def _even_pair(reduction: Reduction, pole: Pole, root: Expr, context: Context) -> Expr:
@@ -301,12 +308,14 @@ def _complex_pair(reduction: Reduction, pole: Pole, root: Expr, context: Context
     t, scale = dress.product((square, HALF)), dress.product((common, HALF))
     delta, p1 = dress.ratio(delta_), dress.ratio(slope) * e
     w = dress.ratio(ring.u - middle) / e
-    both = (dress.ratio(n0) / e, dress.ratio(n1))
+    shared = Ratio(ring, n0.num.gcd(n1.num), n0.den.gcd(n1.den))
+    both = (dress.ratio(n0 / shared) / e, dress.ratio(n1 / shared))
+    front = dress.product((shared, 1), (common, -HALF))
     disc = signs.maybe(_discriminant(p))
     total: Expr = S.Zero
     for sign in (1, -1):
         size = t + sign * delta
-        weight = (both[0] * size + sign * both[1] * p1) / (scale * t * sqrt(2 * size))
+        weight = front * (both[0] * size + sign * both[1] * p1) / (t * sqrt(2 * size))
         x = scale * (size * w - sign * p1) / (sqrt(2 * size) * root)
         if sign > 0:
             part = atan(x)

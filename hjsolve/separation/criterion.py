@@ -42,10 +42,12 @@ TRIES = 40
 """Real points tried for one pair before it is called zero to a bound."""
 
 WIDEST_ZERO = 1e-60
-"""The widest enclosure of 0 that is still called zero, numerically."""
+"""The widest enclosure of 0 that is still called zero, numerically; relative to the
+product of the derivatives that enter."""
 
 REFEREES = 2
 """Real points at which a modular zero is looked at again when roots may be dependent."""
+
 
 @dataclass(frozen=True, slots=True)
 class _Link:
@@ -305,19 +307,19 @@ class _Detector:
         """A point of the domain at which a ball excludes 0, or None.
 
         None means that at ``enough`` points the balls contained 0;
-        ``last_bound`` is then the largest size they left possible.
+        ``last_bound`` is then the largest relative size they left possible.
 
         Raises:
             _OutOfReach: no point of the domain was met, a function has no
                 balls, or the balls stayed too wide to call anything zero.
         """
         chosen = {self.variables[k]: k for k in variables}
-        met, self.last_bound = 0, 0.0
+        met, wide, self.last_bound = 0, 0, 0.0
         for point in points(self._symbols(), self.ranges, TRIES):
-            value = None
+            value, size = None, 0.0
+            walk = BallWalk(self.graph, point, self.stand, chosen, seconds)
             try:
-                walk = BallWalk(self.graph, point, self.stand, chosen, seconds)
-                for value in attempts(walk, lambda jets: value_of(*_readers(jets[0]))):
+                for value, size in attempts(walk, lambda jets: _measured(value_of, jets[0])):
                     if value.is_zero() or not value.contains(0):
                         break
             except NotSupported as error:
@@ -326,18 +328,32 @@ class _Detector:
                 continue
             if not value.contains(0):
                 return point, value
+            if size > WIDEST_ZERO:
+                wide += 1
+                continue
             met += 1
-            self.last_bound = max(self.last_bound, float(abs(value).upper()))
+            self.last_bound = max(self.last_bound, size)
             if met >= enough:
                 break
+        if not met and wide:
+            raise _OutOfReach("the balls stayed too wide to tell zero from a small number")
         if not met:
             raise _OutOfReach("no point was found at which the Hamiltonian has a real value")
-        if self.last_bound > WIDEST_ZERO:
-            raise _OutOfReach("the balls stayed too wide to tell zero from a small number")
         return None
 
     def _symbols(self) -> list[Symbol]:
         return [n.payload for n in self.graph.nodes if n.op == "symbol"]
+
+
+def _measured(value_of: Callable[..., Any], jet: BallJet) -> tuple[Any, float]:
+    """The value, and its size relative to the derivatives it is made of."""
+    value = value_of(*_readers(jet))
+    largest = arb(1)
+    for d in (*jet.first.values(), *jet.first.values(), *jet.second.values()):
+        largest = largest * (1 + abs(d).upper())
+    if value.is_zero():
+        return value, 0.0
+    return value, max(float((abs(value).upper() / largest).upper()), 1e-300)
 
 
 def _readers(jet: BallJet) -> tuple[Callable[[int], Any], Callable[[int, int], Any]]:

@@ -18,8 +18,9 @@ from hjsolve.algebra.generators import Generators, NotRational
 from hjsolve.algebra.identity import vanish
 from hjsolve.algebra.isolate import INVERSES, TWO_VALUED, inverse_power, shows_sign
 from hjsolve.records import Truth
+from hjsolve.separation.freezing import Block
 from hjsolve.separation.momentum import Solved, from_carrier, solve_for
-from hjsolve.separation.staeckel import Block, leaves
+from hjsolve.separation.staeckel import frozen_leaves, leaves
 
 EXPAND_OPERATIONS = 4000
 """A larger expression is not multiplied out in search of a sum."""
@@ -31,7 +32,7 @@ class NewConstant:
 
     symbol: Symbol
     meaning: str
-    integral: Expr
+    integral: Expr | None
 
 
 @dataclass(slots=True)
@@ -43,6 +44,7 @@ class Pieces:
     constants: list[NewConstant] = field(default_factory=list)
     missing: list[Block] = field(default_factory=list)
     valid: list[Expr] = field(default_factory=list)
+    frozen: bool = False
 
 
 def decompose(
@@ -144,13 +146,22 @@ class _Decomposer:
         letters = [Dummy(f"b{n}", real=True) for n in range(len(blocks) - 1)]
         found = leaves(k, epsilon, blocks, self.momenta, letters)
         if found is None:
-            self.pieces.missing.extend(blocks)
-            return
+            raw = frozen_leaves(k, epsilon, blocks, self.momenta, letters)
+            if raw is None:
+                self.pieces.missing.extend(blocks)
+                return
+            found, meanings = raw
+            self.pieces.frozen = True
+            new = [NewConstant(a, m, None) for a, m in zip(letters, meanings, strict=True)]
+        else:
+            integrals = [i.xreplace({epsilon: k}) for i in found.integrals]
+            new = [
+                NewConstant(a, "separation constant", i)
+                for a, i in zip(letters, integrals, strict=True)
+            ]
         put = {epsilon: value}
+        self.pieces.constants.extend(new)
         self.pieces.valid.extend(v.xreplace(put) for v in found.valid)
-        for letter, integral in zip(letters, found.integrals, strict=True):
-            integral = integral.xreplace({epsilon: k})
-            self.pieces.constants.append(NewConstant(letter, "separation constant", integral))
         for leaf in found.leaves:
             self.pieces.equations[leaf.block] = leaf.equation.xreplace(put)
             if len(leaf.block.momenta) == 1:
@@ -219,7 +230,7 @@ def _opened(k: Expr) -> Expr:
 
 
 def _factored(k: Expr) -> Expr:
-    """k as a product of factors over the integers, where it is a fraction of generators."""
+    """K as a product of factors over the integers, where it is a fraction of generators."""
     try:
         ring = Generators([k])
         value = ring.ratio(k)

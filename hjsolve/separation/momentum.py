@@ -122,7 +122,7 @@ def _cleared(k: Expr, value: Expr, p: Symbol) -> Solved | None:
 
 
 def from_carrier(parts: dict[int, Expr], carrier: Expr, p: Symbol) -> Solved | None:
-    """p from Σ parts[k]·carrier^k = 0, where the carrier is p or exp(rate·p)."""
+    """P from Σ parts[k]·carrier^k = 0, where the carrier is p or exp(rate·p)."""
     if carrier == p:
         return from_coefficients(parts, p)
     if isinstance(carrier, sp.exp):

@@ -19,8 +19,8 @@ from hjsolve.records import (
     Verdict,
 )
 from hjsolve.separation.decompose import NewConstant, Pieces, decompose
+from hjsolve.separation.freezing import Block
 from hjsolve.separation.momentum import Solved, equation, linear
-from hjsolve.separation.staeckel import Block
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,7 +89,7 @@ class _Separator:
             self._equations(pieces, held, rename),
             self._reduced(blocks, pieces, rename),
             None if time_momentum is None else time_momentum.xreplace(rename),
-            canonical=not pieces.missing,
+            canonical=not (pieces.missing or pieces.frozen),
         )
 
     # --------------------------------------------------------------- time
@@ -188,9 +188,9 @@ class _Separator:
             meaning = f"momentum of {q.name}" + (" (angular momentum)" if angular else "")
             found[letter] = Constant(rename[letter], meaning, p)
         for c in new:
-            integral = c.integral.xreplace(back)
+            integral = None if c.integral is None else c.integral.xreplace(back)
             meaning = c.meaning
-            if meaning == "separation constant":
+            if integral is not None and meaning == "separation constant":
                 meaning = self._recognised(integral) or meaning
             found[c.symbol] = Constant(rename[c.symbol], meaning, integral)
         return tuple(found[letter] for letter in rename)

@@ -98,7 +98,9 @@ def _constants(separation: Separation) -> Section:
 def _separated(separation: Separation) -> Section:
     section = Section("Separated equations")
     for equation in separation.equations:
-        section.lines.append(Line("", _equal(equation.momentum, equation.solution), equation.where))
+        section.lines.append(
+            Line("", _equal(equation.momentum, equation.solution), equation.where, equation.valid)
+        )
     for reduced in separation.reduced:
         names = ", ".join(symbol.name for symbol in reduced.block)
         section.lines.append(Line(f"left on the block {names}", reduced.equation))

@@ -101,13 +101,11 @@ def _obstruction(obstruction: Obstruction) -> dict[str, Any]:
 
 
 def _equation(equation: SeparatedEquation, write: Write) -> dict[str, Any]:
-    where = equation.where
+    where, valid, squared = equation.where, equation.valid, equation.squared
     return {
         "coordinate": equation.coordinate.name,
-        "momentum": write(Formula(equation.solution, where)),
-        "momentum_squared": (
-            None if equation.squared is None else write(Formula(equation.squared, where))
-        ),
+        "momentum": write(Formula(equation.solution, where, valid)),
+        "momentum_squared": None if squared is None else write(Formula(squared, where, valid)),
     }
 
 

@@ -141,7 +141,7 @@ def test_single_term_has_the_variable_once(integrand, variable, domain) -> None:
 
 HARD = [
     sqrt(E - x**5 + sp.cosh(x)),
-    sqrt(E - sp.Abs(x)),
+    sqrt(E - sp.Abs(x**2 - 1)),
     sp.acosh(E - x**2),
     (E - x**2) ** Rational(1, 4),
     (E - x**2) ** Rational(1, 3),
@@ -213,6 +213,15 @@ def test_constants_and_arbitrary_functions_of_time_pass_through() -> None:
     assert sp.expand(form.expression - E * x - f * x**2 / 2) == 0
     assert integrate(E * w, x, LINE).closed_forms[0].expression == E * w * x
     assert integrate(Integer(0), x, LINE).closed_forms[0].expression == 0
+
+
+def test_the_halves_of_a_function_of_the_modulus_meet_at_zero() -> None:
+    found = integrate(sqrt(2 * m * (E - g * sp.Abs(x))), x, LINE)
+    right, left = (f.expression for f in found.closed_forms)
+    assert right.subs(x, 0) == 0
+    assert left.subs(x, 0) == 0
+    assert sp.simplify((right + left.subs(x, -x)).subs({m: 2, g: 3, E: 5, x: 1})) == 0
+    assert [str(f.valid[-1]) for f in found.closed_forms] == ["0 < x", "x < 0"]
 
 
 def test_constants_of_nature_are_no_obstacle() -> None:

@@ -8,7 +8,8 @@ from hjsolve.errors import InputError
 from hjsolve.reading import read_problem
 from hjsolve.records import Truth
 from hjsolve.separation import detect, separate
-from hjsolve.separation.staeckel import Block, leaves
+from hjsolve.separation.freezing import Block
+from hjsolve.separation.staeckel import leaves
 
 SPHERICAL = {
     "coordinates": ["r", "theta", "phi"],
