@@ -10,7 +10,6 @@ from __future__ import annotations
 
 import time
 from fractions import Fraction
-from itertools import pairwise
 
 import numpy as np
 from flint import arb

@@ -78,9 +78,9 @@ class Signs:
                 else:
                     known *= s
         if not rest.is_one():
-            sign = self._product(rest)
-            if sign is not None:
-                return known * sign, self.ring.context.constant(1)
+            of_rest = self._product(rest)
+            if of_rest is not None:
+                return known * of_rest, self.ring.context.constant(1)
         return known, rest
 
     def _product(self, rest: Any) -> int | None:
