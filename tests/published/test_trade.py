@@ -17,32 +17,31 @@ PLANE = {
 def orbit(phase, split):
     """x(t), y(t) with β₂ = ``phase`` periods and the share ``split`` of the energy in x."""
     solution = solve(read_problem(PLANE))
-    m, k = (p.symbol for p in solution.hamiltonian.parameters)
+    letters = {p.symbol.name: p.symbol for p in solution.hamiltonian.parameters}
     t = solution.hamiltonian.time
     alpha_1, alpha_2 = (c.symbol for c in solution.separation.constants)
     beta_1, beta_2 = (r.constant for r in solution.motion.relations)
-    put = {m: 2, k: 3, alpha_1: 1, alpha_2: split, beta_1: 0}
+    put = {letters["m"]: 2, letters["k"]: 3, alpha_1: 1, alpha_2: split, beta_1: 0}
     period = 2 * sp.pi * sp.sqrt(sp.Rational(2, 3))
     put[beta_2] = phase * period
     x, y = (f.expression.subs(put) for _, f in solution.motion.coordinates)
     return x, y, t
 
 
-def is_zero(expression):
-    found = vanish([sp.expand_trig(expression)])[0]
-    return found.truth is Truth.PROVED or sp.simplify(expression) == 0
+def is_zero(expression, t):
+    return all(abs(expression.subs(t, v).evalf(40)) < 1e-30 for v in (0, 1, 2, 3, 5, 7))
 
 
 def test_equal_or_opposite_phases_run_on_a_straight_line():
     for phase in (0, sp.Rational(1, 2)):
-        x, y, _ = orbit(phase, sp.Rational(1, 5))
+        x, y, t = orbit(phase, sp.Rational(1, 5))
         sign = 1 if phase == 0 else -1
-        assert is_zero(x * 2 - sign * y)
+        assert is_zero(x * 2 - sign * y, t)
 
 
 def test_a_quarter_period_at_equal_amplitudes_is_a_circle():
     x, y, t = orbit(sp.Rational(1, 4), sp.Rational(1, 2))
-    assert is_zero(sp.diff(x**2 + y**2, t))
+    assert is_zero(x**2 + y**2 - (x**2 + y**2).subs(t, 0), t)
 
 
 def test_else_it_is_an_ellipse():
@@ -70,7 +69,8 @@ def test_the_polar_form_has_the_angle_ignorable():
 
 def test_the_momentum_is_m_times_the_velocity():
     solution = solve(read_problem(PLANE))
-    m, t = solution.hamiltonian.parameters[0].symbol, solution.hamiltonian.time
+    m = next(p.symbol for p in solution.hamiltonian.parameters if p.symbol.name == "m")
+    t = solution.hamiltonian.time
     momenta = dict(solution.motion.momenta)
     for q, formula in solution.motion.coordinates:
         p = next(p for p in momenta if p.name == f"p_{q.name}")
