@@ -129,7 +129,7 @@ def rewritten(e: Expr) -> Expr | None:
         plain, rest = e.exp.as_coeff_Add(rational=True)
         power = sp.exp(rest * sp.log(e.base), evaluate=False)
         return power if plain == 0 else Mul(e.base**plain, power, evaluate=False)
-    u = e.args[0] if e.args else None
+    u: Any = e.args[0] if e.args else None
     match e:
         case sp.tan():
             return sp.sin(u) / sp.cos(u)

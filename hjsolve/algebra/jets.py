@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import cast
 
 import numpy as np
 from sympy import Symbol
@@ -62,7 +63,7 @@ class JetWalk(Walk):
         value = self.evaluate(op, payload, [c.value for c in children], values, size)
         if op == "symbol" and payload in self.index:
             jet = _constant(value)
-            jet.support = (self.index[payload],)  # type: ignore[index]
+            jet.support = (self.index[payload],)
             jet.gradient = np.ones((size, 1), dtype=np.int64)
             jet.hessian = np.zeros((size, 1, 1), dtype=np.int64)
             return jet
@@ -138,7 +139,7 @@ class JetWalk(Walk):
                 [x * r % p, (p - y * r % p) % p],
                 [[(p - xy) % p, difference], [difference, xy]],
             )
-        name, orders = payload  # type: ignore[misc]
+        name, orders = cast("tuple[str, tuple[int, ...]]", payload)
         first, second = [], []
         for i in range(len(args)):
             raised = _raised(orders, i)
@@ -182,7 +183,7 @@ class JetWalk(Walk):
             elif child.support:
                 at = np.array([support.index(k) for k in child.support])
                 total.gradient[:, at] = (total.gradient[:, at] + child.gradient) % p
-                block = np.ix_(range(size), at, at)
+                block = np.ix_(np.arange(size), at, at)
                 total.hessian[block] = (total.hessian[block] + child.hessian) % p
         return total
 
@@ -228,7 +229,7 @@ def _spread(jet: Jet, support: tuple[int, ...]) -> Jet:
     hessian = np.zeros((size, s, s), dtype=np.int64)
     if jet.support:
         gradient[:, at] = jet.gradient
-        hessian[np.ix_(range(size), at, at)] = jet.hessian
+        hessian[np.ix_(np.arange(size), at, at)] = jet.hessian
     return Jet(support, jet.value, gradient, hessian)
 
 

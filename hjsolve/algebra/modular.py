@@ -22,6 +22,7 @@ from __future__ import annotations
 import math
 import secrets
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -73,8 +74,8 @@ class Field:
 
     def hashed(self, key: int, *values: Array) -> Array:
         """A residue in 1..p-1 that depends on ``key`` and ``values`` alone."""
-        state = np.full(values[0].shape, (self.salt ^ (key * 0x9E3779B97F4A7C15)) & (2**64 - 1))
-        state = state.astype(np.uint64)
+        start = (self.salt ^ (key * 0x9E3779B97F4A7C15)) & (2**64 - 1)
+        state = np.full(values[0].shape, start, dtype=np.uint64)
         for value in values:
             state = _mix(state ^ value.astype(np.uint64))
         return (state % np.uint64(self.p - 1)).astype(np.int64) + 1
@@ -87,7 +88,7 @@ class Field:
         return numerator % self.p * pow(below, -1, self.p) % self.p
 
 
-def _mix(z: npt.NDArray[np.uint64]) -> npt.NDArray[np.uint64]:
+def _mix(z: npt.NDArray[Any]) -> npt.NDArray[np.uint64]:
     """Steele, Lea and Flood's splitmix64 finaliser (from memory)."""
     with np.errstate(over="ignore"):
         z = z + np.uint64(0x9E3779B97F4A7C15)
@@ -215,7 +216,7 @@ class Walk:
             case "pi":
                 return np.full(size, field.hashed(1, np.zeros(1, dtype=np.int64))[0])
             case "symbol":
-                return values[payload]  # type: ignore[index]
+                return values[payload]
             case "add":
                 total = below[0]
                 for term in below[1:]:
@@ -276,7 +277,7 @@ class Walk:
             value = np.where(bit == 1, value, p - value)
         return field.power(value, numerator % (p - 1))
 
-    def _generator(self, key: int, monomial: Array) -> tuple[Array, Array]:
+    def _generator(self, key: int, monomial: Array) -> tuple[Array, npt.NDArray[np.bool_]]:
         """(free residue for |m|, whether m counts as −|m|); so that m and −m agree."""
         flipped = monomial > self.field.p // 2
         size = np.where(flipped, self.field.p - monomial, monomial)
@@ -307,13 +308,14 @@ class Walk:
         """(cos, sin, where they exist) of Σ coefficient·monomial."""
         field, p = self.field, self.field.p
         size = monomials[0].size
-        cosine, sine = np.ones(size, dtype=np.int64), np.zeros(size, dtype=np.int64)
+        cosine: Array = np.ones(size, dtype=np.int64)
+        sine: Array = np.zeros(size, dtype=np.int64)
         exists = np.ones(size, dtype=bool)
         for coefficient, monomial in zip(coefficients, monomials, strict=True):
             quarter = self._quarter_turns(coefficient, monomial)
             if quarter is not None:
-                c, s = [(1, 0), (0, 1), (p - 1, 0), (0, p - 1)][quarter]
-                cosine, sine = (c * cosine - s * sine) % p, (c * sine + s * cosine) % p
+                a, b = [(1, 0), (0, 1), (p - 1, 0), (0, p - 1)][quarter]
+                cosine, sine = (a * cosine - b * sine) % p, (a * sine + b * cosine) % p
                 continue
             exponent = self._exponent(coefficient)
             if exponent is None:

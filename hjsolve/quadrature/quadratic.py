@@ -308,9 +308,9 @@ def _complex_pair(reduction: Reduction, pole: Pole, root: Expr, context: Context
     t, scale = dress.product((square, HALF)), dress.product((common, HALF))
     delta, p1 = dress.ratio(delta_), dress.ratio(slope) * e
     w = dress.ratio(ring.u - middle) / e
-    shared = Ratio(ring, n0.num.gcd(n1.num), n0.den.gcd(n1.den))
-    both = (dress.ratio(n0 / shared) / e, dress.ratio(n1 / shared))
-    front = dress.product((shared, 1), (common, -HALF))
+    factor = Ratio(ring, n0.num.gcd(n1.num), n0.den.gcd(n1.den))
+    both = (dress.ratio(n0 / factor) / e, dress.ratio(n1 / factor))
+    front = dress.product((factor, 1), (common, -HALF))
     disc = signs.maybe(_discriminant(p))
     total: Expr = S.Zero
     for sign in (1, -1):

@@ -387,7 +387,7 @@ def _dense(jet: Jet, size: int) -> tuple[Array, Array]:
     if jet.support:
         at = np.array(jet.support)
         gradient[:, at] = jet.gradient
-        hessian[np.ix_(range(count), at, at)] = jet.hessian
+        hessian[np.ix_(np.arange(count), at, at)] = jet.hessian
     return gradient, hessian
 
 

@@ -164,7 +164,10 @@ def clear_radicals(
 def from_coefficients(parts: dict[int, Expr], p: Symbol) -> Solved | None:
     """P from Σ parts[k] p^k = 0."""
     degree = max(parts)
-    get = lambda k: parts.get(k, sp.S.Zero)  # noqa: E731 - a local shorthand
+
+    def get(k: int) -> Expr:
+        return parts.get(k, sp.S.Zero)
+
     if degree == 1:
         return linear(spread(-get(0), get(1)))
     if degree == 2:

@@ -81,7 +81,9 @@ def test_every_setting_is_in_the_readme():
     settings = (ROOT / "api/settings.py").read_text("utf-8")
     names = {w.strip("`|., ") for w in settings.split() if "HJSOLVE_" in w}
     assert names
-    assert all(f"`{name}`" in readme for name in names if name.isidentifier() and name != "HJSOLVE_")
+    assert all(
+        f"`{name}`" in readme for name in names if name.isidentifier() and name != "HJSOLVE_"
+    )
 
 
 def test_dependencies_are_explained():

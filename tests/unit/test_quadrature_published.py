@@ -255,7 +255,7 @@ def test_definite_integrals(entry: dict[str, Any], answers: Any) -> None:
 
 
 @pytest.mark.parametrize("entry", [e for e in CLOSED if "between" in e], ids=by_name)
-def test_published_values_between_the_turning_points(entry: dict[str, Any], answers: Any) -> None:
+def test_values_between_the_turning_points(entry: dict[str, Any], answers: Any) -> None:
     case, found, _ = answers(entry)
     numbers = Numbers.of(case, found.closed_forms[0])
     integrand = numbers.function(case.integrand)
