@@ -146,7 +146,7 @@ def _equation(separation: Separation, ranges: dict[Symbol, Range]) -> Check:
 
 
 def _independence(separation: Separation, ranges: dict[Symbol, Range]) -> Check:
-    """det ∂²S/∂q∂α is not identically zero.
+    """Whether det ∂²S/∂q∂α is not identically zero.
 
     The momenta p(q, α) invert the first integrals α(q, p), so the determinant
     is 1/det ∂α/∂p, which has no radicals and is finite wherever it is met.

@@ -316,16 +316,17 @@ class _Detector:
         chosen = {self.variables[k]: k for k in variables}
         met, wide, self.last_bound = 0, 0, 0.0
         for point in points(self._symbols(), self.ranges, TRIES):
-            value, size = None, 0.0
+            found = None
             walk = BallWalk(self.graph, point, self.stand, chosen, seconds)
             try:
-                for value, size in attempts(walk, lambda jets: _measured(value_of, jets[0])):
-                    if value.is_zero() or not value.contains(0):
+                for found in attempts(walk, lambda jets: _measured(value_of, jets[0])):
+                    if found[0].is_zero() or not found[0].contains(0):
                         break
             except NotSupported as error:
                 raise _OutOfReach(f"the function {error} has no ball evaluation here") from error
-            if value is None:
+            if found is None:
                 continue
+            value, size = found
             if not value.contains(0):
                 return point, value
             if size > WIDEST_ZERO:
