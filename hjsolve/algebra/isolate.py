@@ -18,7 +18,7 @@ class Isolated:
 
 
 def isolate(k: Expr, value: Expr, x: Symbol) -> Isolated | None:
-    """x from k = value; None where a step has no inverse.
+    """X from k = value; None where a step has no inverse.
 
     Every inverse taken is the analytic one: asin(u) = v gives u = sin(v) for
     all v, so that a motion found within one branch continues past its end.

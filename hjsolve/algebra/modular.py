@@ -22,16 +22,20 @@ from __future__ import annotations
 import math
 import secrets
 from collections.abc import Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
-import numpy.typing as npt
 from sympy import Symbol
 from sympy.ntheory import isprime
 
 from hjsolve.algebra.graph import Graph
 
-Array = npt.NDArray[np.int64]
+if TYPE_CHECKING:
+    import numpy.typing as npt  # 25 ms at start-up that only a type checker needs
+
+    Array = npt.NDArray[np.int64]
+else:
+    Array = np.ndarray
 
 ROOT_LIMIT = 6
 """More independent square roots than this would need too many draws."""

@@ -19,7 +19,6 @@ from dataclasses import dataclass, field
 import sympy as sp
 from sympy import Add, Dummy, Expr, Matrix, Mul, Symbol
 from sympy.core.relational import Relational
-from sympy.integrals.manualintegrate import manualintegrate
 
 from hjsolve.algebra.identity import vanish
 from hjsolve.algebra.roots import unify_roots
@@ -265,7 +264,7 @@ def _smooth_antiderivative(rate: Expr, tau: Symbol) -> Expr | None:
         for w in [sp.diff(f.args[0], tau)]
         if w in letters
     }
-    result = manualintegrate(rate.xreplace(put), tau)
+    result = sp.integrate(rate.xreplace(put), tau, manual=True)
     result = result.xreplace({letter: w for w, letter in letters.items()})
     if result.has(sp.Integral):
         return None

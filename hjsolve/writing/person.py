@@ -6,13 +6,12 @@ import textwrap
 
 from sympy import Expr
 from sympy.core.relational import Relational
-from sympy.printing.pretty import pretty
 
 from hjsolve.records import Definition, Solution
-from hjsolve.writing.depth import deep
 from hjsolve.writing.infix import write_infix
 from hjsolve.writing.outline import Line, outline
 from hjsolve.writing.sentences import verdict_sentences
+from hjsolve.writing.unicode import unicode_line
 
 WIDTH = 100
 _INDENT = "  "
@@ -52,17 +51,8 @@ def _written(line: Line) -> list[str]:
 
 
 def one_line(formula: Expr | Relational) -> str:
-    """One line of Unicode where that is possible within the width, else infix."""
-    text = write_infix(formula)
-    if len(text) > WIDTH:
-        return text
-    # Only a short formula is tried: the two-dimensional printer is slow on a long one.
-    shown = str(deep(_pretty, formula))
-    return text if "\n" in shown or len(shown) + len(_INDENT) > WIDTH else shown
-
-
-def _pretty(formula: Expr | Relational) -> str:
-    return str(pretty(formula, use_unicode=True, wrap_line=False))
+    """The formula on one line, in Unicode."""
+    return unicode_line(write_infix(formula))
 
 
 def _definition(definition: Definition) -> str:

@@ -20,7 +20,10 @@ SOURCES = sorted((ROOT / "hjsolve").rglob("*.py")) + sorted((ROOT / "api").rglob
 def imported(path):
     """(module, whether at the top of the file) for every import of a file."""
     tree = ast.parse(path.read_text("utf-8"))
-    top = set(map(id, tree.body))
+    typing = [
+        n.body for n in tree.body if isinstance(n, ast.If) and "TYPE_CHECKING" in ast.dump(n.test)
+    ]
+    top = set(map(id, [*tree.body, *(n for body in typing for n in body)]))
     for node in ast.walk(tree):
         if isinstance(node, ast.Import):
             yield from ((a.name, id(node) in top) for a in node.names)

@@ -259,7 +259,7 @@ def test_for_person() -> None:
     order = ["Constants of the motion", "Separated equations", "Complete integral", "Motion"]
     assert [h for h in headings if h in order] == order
     assert max(map(len, lines)) <= 100
-    assert "for D⋅x < α₁" in text
+    assert "for D·x < α₁" in text
     assert "proved: ∂S/∂t + H = 0 (symbolic)" in text
     assert text.endswith("\n")
 
