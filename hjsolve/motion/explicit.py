@@ -17,10 +17,12 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import sympy as sp
-from sympy import Add, Dummy, Expr, Matrix, Mul, Symbol
+from sympy import Add, Dummy, Expr, Mul, Symbol
 from sympy.core.relational import Relational
 
+from hjsolve.algebra.generators import NotRational
 from hjsolve.algebra.identity import vanish
+from hjsolve.algebra.linear import constant_relations
 from hjsolve.algebra.roots import unify_roots
 from hjsolve.motion.inversions import invert
 from hjsolve.records import (
@@ -33,7 +35,6 @@ from hjsolve.records import (
 )
 
 Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
-SAMPLES = (sp.Rational(2, 3), sp.Rational(5, 7), sp.Rational(8, 5), sp.Rational(11, 9))
 
 
 @dataclass(slots=True)
@@ -103,36 +104,21 @@ class _Explicit:
 
     def _weights(self, e: SeparatedEquation) -> list[Expr] | None:
         """c_k with Σ c_k ∂p_i/∂α_k = 0 for all other coordinates i, not for this one."""
-        others: list[list[Expr]] = []
-        for q, rows in self.rows.items():
-            if q == e.coordinate:
-                continue
-            for row in rows:
-                for sample in SAMPLES[: 1 if not any(x.has(q) for x in row) else len(SAMPLES)]:
-                    others.append([x.subs(q, sample) for x in row])
+        others = [row for q, rows in self.rows.items() if q != e.coordinate for row in rows]
         if not others:
             return [sp.S.One] + [sp.S.Zero] * (len(self.alphas) - 1)
-        if any(x.has(sp.nan, sp.zoo) for row in others for x in row):
+        try:
+            candidates = constant_relations(others, self.h.coordinates)
+        except NotRational:
             return None
-        for vector in Matrix(others).nullspace(simplify=sp.cancel):
-            weights = list(vector)
+        for weights in candidates:
             own = [
                 Add(*(c * x for c, x in zip(weights, row, strict=True)))
                 for row in self.rows[e.coordinate]
             ]
-            if any(vanish([x])[0].truth is Truth.REFUTED for x in own) and self._holds(e, weights):
+            if any(vanish([x])[0].truth is Truth.REFUTED for x in own):
                 return weights
         return None
-
-    def _holds(self, e: SeparatedEquation, weights: list[Expr]) -> bool:
-        """The weights were found at sample points; prove them as identities."""
-        claims = [
-            Add(*(c * x for c, x in zip(weights, row, strict=True)))
-            for q, rows in self.rows.items()
-            if q != e.coordinate
-            for row in rows
-        ]
-        return all(f.truth is Truth.PROVED for f in vanish(claims)) if claims else True
 
     # -------------------------------------------------------------- invert
 
@@ -264,7 +250,10 @@ def _smooth_antiderivative(rate: Expr, tau: Symbol) -> Expr | None:
         for w in [sp.diff(f.args[0], tau)]
         if w in letters
     }
-    result = sp.integrate(rate.xreplace(put), tau, manual=True)
+    result: Expr = sp.S.Zero
+    for term in Add.make_args(rate.xreplace(put)):
+        constant, moving = term.as_independent(tau, as_Add=False)
+        result += constant * sp.integrate(moving, tau, manual=True)
     result = result.xreplace({letter: w for w, letter in letters.items()})
     if result.has(sp.Integral):
         return None

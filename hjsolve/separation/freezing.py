@@ -17,7 +17,7 @@ import sympy as sp
 from sympy import Dummy, Expr, Symbol
 
 from hjsolve.algebra.generators import Generators, NotRational, Ratio, coefficients, divide
-from hjsolve.separation.columns import Exponents, common, uses
+from hjsolve.algebra.linear import Exponents, common, uses
 from hjsolve.separation.momentum import clear_radicals
 
 TRIPLES = ((3, 4, 5), (5, 12, 13), (8, 15, 17), (7, 24, 25), (20, 21, 29), (12, 35, 37))

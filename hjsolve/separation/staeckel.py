@@ -25,16 +25,14 @@ import sympy as sp
 from sympy import Add, Expr, Mul, Symbol
 
 from hjsolve.algebra.generators import NotRational, Ratio, coefficients, divide
-from hjsolve.separation.columns import (
+from hjsolve.algebra.linear import (
     Column,
     Exponents,
     Slot,
     common,
-    cost,
     echelon,
     lcm,
     negated,
-    proportion,
     solve,
     subtract,
     touches,
@@ -213,7 +211,7 @@ class _Group(Frozen):
         ordered = [s for s in order if s in vector]
         if energy is not None:
             for n in {s[0] for s in vector} & {s[0] for s in energy}:
-                scale = proportion(energy, vector, n)
+                scale = _proportion(energy, vector, n)
                 if scale is not None:
                     first = ordered[0][0]
                     same_sign = -scale if n != first else scale
@@ -235,12 +233,12 @@ class _Group(Frozen):
         for _ in range(2):
             for vector in vectors:
                 shifts = [column[s] / v for s, v in vector.items() if s in column]
-                best = cost(column, entered)
+                best = _cost(column, entered)
                 for shift in shifts:
                     moved = dict(column)
                     subtract(moved, vector, shift)
-                    if cost(moved, entered) < best:
-                        best = cost(moved, entered)
+                    if _cost(moved, entered) < best:
+                        best = _cost(moved, entered)
                         column.clear()
                         column.update(moved)
 
@@ -328,3 +326,20 @@ class _Group(Frozen):
             above = value.numerator.to_dict().items()
             return Add(*(self.ring.term(e, c) / below for e, c in above))
         return self.ring.expression(value)
+
+
+def _proportion(energy: Column, vector: Column, n: int) -> Ratio | None:
+    """energy/vector on block n where the two are proportional there, else None."""
+    slots = {s for s in vector if s[0] == n}
+    if slots != {s for s in energy if s[0] == n}:
+        return None
+    ratios = [energy[s] / vector[s] for s in slots]
+    return ratios[0] if all((r - ratios[0]).is_zero() for r in ratios) else None
+
+
+def _cost(column: Column, entered: set[int]) -> int:
+    """Terms in a column; those in an equation without ε count double."""
+    return sum(
+        (len(v.numerator) + len(v.denominator) - 1) * (1 if s[0] in entered else 2)
+        for s, v in column.items()
+    )
