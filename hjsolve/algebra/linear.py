@@ -134,8 +134,8 @@ def constant_relations(
     found = []
     for free in (k for k in range(count) if k not in pivots):
         vector = [sp.S.One if k == free else sp.S.Zero for k in range(count)]
-        for slot, row in basis:
-            if (free, ()) in row:
-                vector[slot[0]] = ring.expression(-row[free, ()])
+        for slot, reduced in basis:
+            if (free, ()) in reduced:
+                vector[slot[0]] = ring.expression(-reduced[free, ()])
         found.append(vector)
     return found

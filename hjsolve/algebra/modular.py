@@ -22,6 +22,7 @@ from __future__ import annotations
 import math
 import secrets
 from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -57,7 +58,7 @@ class Field:
 
     def __init__(self, graph: Graph) -> None:
         self.odd = _odd_root_degrees(graph)
-        self.p = _prime(self.odd)
+        self.p = _prime(self.odd, radicands(graph).constants)
         self.salt = secrets.randbits(63)
         self.denominator = _argument_denominator(graph)
 
@@ -124,12 +125,47 @@ def _argument_denominator(graph: Graph) -> int:
     return common
 
 
-def _prime(odd: int) -> int:
-    """A random prime below 2**31, 3 modulo 4, for which odd roots are unique."""
+def _prime(odd: int, constants: Sequence[tuple[int, int]]) -> int:
+    """A random prime below 2**31, 3 modulo 4, that suits the roots taken.
+
+    Odd roots are unique modulo it, and the rational numbers ``constants`` are
+    squares (half of the primes for each; the first six are seen to).
+    """
     while True:
         p = (secrets.randbelow(2**29) + 2**30 + 2**29) | 3
-        if p < 2**31 and math.gcd(p - 1, odd) == 1 and isprime(p):
+        if p >= 2**31 or math.gcd(p - 1, odd) != 1 or not isprime(p):
+            continue
+        if all(pow(a * b, (p - 1) // 2, p) == 1 for a, b in constants[:6]):
             return p
+
+
+@dataclass(frozen=True, slots=True)
+class Radicands:
+    """What stands under even roots: rational numbers, ±a letter, anything else."""
+
+    constants: tuple[tuple[int, int], ...]
+    letters: dict[Symbol, int]
+    others: int
+
+
+def radicands(graph: Graph) -> Radicands:
+    """Sort the radicands of a graph by what is needed to make squares of them."""
+    constants: list[tuple[int, int]] = []
+    letters: dict[Symbol, int] = {}
+    others = len({n.args[0] for n in graph.nodes if n.op == "asin"})  # 1 − u² is to be a square
+    for at in {n.args[0] for n in graph.nodes if n.op == "power" and n.payload[1] % 2 == 0}:
+        node = graph.nodes[at]
+        sign, letter = 1, node
+        if node.op == "mul" and len(node.args) == 2:
+            first, letter = (graph.nodes[k] for k in node.args)
+            sign = -1 if first.payload == (-1, 1) else 0
+        if node.op == "number":
+            constants.append(node.payload)
+        elif letter.op == "symbol" and sign and letters.setdefault(letter.payload, sign) == sign:
+            continue
+        else:
+            others += 1
+    return Radicands(tuple(constants), letters, others)
 
 
 def square_roots(graph: Graph) -> int:
@@ -161,12 +197,12 @@ class Walk:
 
     def points(self) -> dict[Symbol, Array]:
         """Residues for every symbol at points where the graph has a value; raises NoPoints."""
-        roots = square_roots(self.graph)
-        if roots > ROOT_LIMIT:
+        roots, hard = square_roots(self.graph), radicands(self.graph).others
+        if hard > ROOT_LIMIT:
             raise NoPoints
         keep = POINTS if roots == 0 else min(6 * 2**roots, 96)
         for _ in range(FIELDS):
-            values = self._draw(max(2 * keep, keep * 2 ** (roots + 1)))
+            values = self._draw(max(2 * keep, keep * 2 ** (hard + 1)))
             good = self._good(values)
             if good.size >= keep // 2:
                 return {s: v[good[:keep]] for s, v in values.items()}
@@ -176,7 +212,11 @@ class Walk:
     def _draw(self, count: int) -> dict[Symbol, Array]:
         rng = np.random.default_rng(secrets.randbits(128))
         symbols = [n.payload for n in self.graph.nodes if n.op == "symbol"]
-        return {s: rng.integers(2, self.field.p - 1, size=count) for s in symbols}
+        drawn = {s: rng.integers(2, self.field.p - 1, size=count) for s in symbols}
+        # a letter that stands alone under a root is drawn as a square: no point is lost to it
+        for letter, sign in radicands(self.graph).letters.items():
+            drawn[letter] = sign * drawn[letter] ** 2 % self.field.p
+        return drawn
 
     def _good(self, values: dict[Symbol, Array]) -> Array:
         """Positions at which nothing divides by 0 and every radicand is a square."""
