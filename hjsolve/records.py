@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from enum import StrEnum
 from typing import Literal
 
-from sympy import Expr, Rational, Symbol, oo
+from sympy import Expr, Integral, Rational, S, Symbol, oo
 from sympy.core.relational import Relational
 
 
@@ -216,6 +216,16 @@ class Antiderivative:
     substitution: Expr | None = None
     reason: str = ""
 
+    @property
+    def formula(self) -> Formula:
+        """The first closed form, or the integral left as it stands from a reference point."""
+        if self.closed_forms:
+            return self.closed_forms[0]
+        q = self.variable
+        start = Symbol(f"{q.name}_0", real=True)
+        words = f"reference point: any fixed value of {q.name} in the interval of motion"
+        return Formula(Integral(self.integrand, (q, start, q)), (Definition(start, free=words),))
+
 
 @dataclass(frozen=True, slots=True)
 class Term:
@@ -302,3 +312,160 @@ class Solution:
     def hamiltonian(self) -> Hamiltonian:
         """The problem as read."""
         return self.separation.hamiltonian
+
+
+# ------------------------------------------------------------------- charts
+
+Geometry = Expr | tuple[Expr, ...] | tuple[tuple[Expr, ...], ...]
+"""A number, a vector, or a list of vectors (rows)."""
+
+
+@dataclass(frozen=True, slots=True)
+class Chart:
+    """A coordinate system placed in the space of a Cartesian Hamiltonian.
+
+    ``geometry`` holds its named exact data, in y = ``mass_map`` · x where that is
+    given, else in x.  ``free`` are the letters in it that may take any value.
+    ``transformation`` gives each coordinate of the request in the chart's own,
+    ``squares`` the squared scale factors of the kinetic energy ½ Σ weight·p_i²/h_i².
+    ``positive`` are expressions that are positive all over the chart's domain.
+    """
+
+    family: str
+    geometry: tuple[tuple[str, Geometry], ...]
+    free: tuple[Symbol, ...]
+    coordinates: tuple[Symbol, ...]
+    transformation: tuple[tuple[Symbol, Expr], ...]
+    momenta: tuple[Symbol, ...] = ()
+    domains: tuple[Domain, ...] = ()
+    squares: tuple[Expr, ...] = ()
+    weight: Expr = S.One
+    positive: tuple[Expr, ...] = ()
+    mass_map: tuple[tuple[Expr, ...], ...] | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Charts:
+    """The coordinate systems in which a Hamiltonian separates, preferred first.
+
+    ``complete``: the list is proved exhaustive for generic values of the
+    parameters; an empty complete list means that no orthogonal separable
+    coordinates exist on that space, which does not say "not integrable".
+    ``dimension`` is that of the space of tensors the list was read from,
+    ``unknowns`` how many there were, ``rank`` the rank of the linear conditions
+    that balls proved at the real points ``witness`` (unknowns − rank is an upper
+    bound on the dimension, the tensors found are a lower one).  ``reason`` says
+    why the list is not proved complete.
+    """
+
+    found: tuple[Chart, ...]
+    complete: bool
+    unknowns: int = 0
+    dimension: int = 0
+    rank: int = 0
+    witness: tuple[tuple[tuple[str, Rational], ...], ...] = ()
+    reason: str = ""
+    conditions: tuple[Expr, ...] = ()
+    checks: tuple[Check, ...] = ()
+
+
+# ----------------------------------------------------------- transformation
+
+
+@dataclass(frozen=True, slots=True)
+class Frame:
+    """The canonical variables of one side, pair by pair."""
+
+    coordinates: tuple[Symbol, ...]
+    momenta: tuple[Symbol, ...]
+
+    @property
+    def variables(self) -> tuple[Symbol, ...]:
+        """The coordinates, then the momenta."""
+        return self.coordinates + self.momenta
+
+
+@dataclass(frozen=True, slots=True)
+class TransformationProblem:
+    """A transformation as read: its generating function, or the new variables.
+
+    ``kinds`` has the kind (1 to 4) of each pair when ``function`` is given.
+    ``given`` has the new variables as functions of the old ones (and time), or
+    the old ones in the new ones when ``backward``; coordinates alone are to be
+    completed with their momenta.
+    """
+
+    old: Frame
+    new: Frame
+    domains: tuple[tuple[Symbol, Domain], ...]
+    parameters: tuple[Parameter, ...]
+    functions: tuple[str, ...]
+    time: Symbol
+    hamiltonian: Expr | None = None
+    kinds: tuple[int, ...] = ()
+    function: Expr | None = None
+    given: tuple[tuple[Symbol, Expr], ...] = ()
+    backward: bool = False
+
+
+Map = tuple[tuple[Symbol, Formula], ...]
+"""Variables of one side as functions of the other side's."""
+
+
+@dataclass(frozen=True, slots=True)
+class Branch:
+    """One branch: both maps and the new Hamiltonian, None where no closed form was found.
+
+    ``positive`` tells whether points with all new variables positive lie in it.
+    """
+
+    old_in_new: Map | None
+    new_in_old: Map | None
+    new_hamiltonian: Formula | None
+    positive: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class GeneratingFunction:
+    """The function of one combination of kinds; None with the reason where there is none.
+
+    ``exists`` is REFUTED when the generating variables are proved dependent.
+    """
+
+    kinds: tuple[int, ...]
+    exists: Truth
+    function: Formula | None
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class WrongBracket:
+    """A Poisson bracket that is not what it has to be, and its value at a point."""
+
+    pair: tuple[str, str]
+    expected: Expr
+    value: Expr
+    point: tuple[tuple[str, Rational], ...]
+    midpoint: float
+    radius: float
+
+
+@dataclass(frozen=True, slots=True)
+class Transformation:
+    """Everything that is known of a transformation.
+
+    ``canonical`` is UNDECIDED when neither proved nor refuted; ``multiplier``
+    is the constant that all brackets have when it is not 1.  ``branches`` has
+    the one of the top level first.  ``relations`` are the implicit relations
+    of the generating function that was given.
+    """
+
+    problem: TransformationProblem
+    canonical: Truth
+    multiplier: Expr | None
+    branches: tuple[Branch, ...]
+    relations: tuple[Relational, ...]
+    generating_function: GeneratingFunction | None
+    generating_functions: tuple[GeneratingFunction, ...]
+    obstruction: WrongBracket | None
+    certificate: Certificate

@@ -94,13 +94,13 @@ class Generators:
     def __init__(self, expressions: Sequence[Expr], extra: Sequence[Symbol] = ()) -> None:
         """Find the generators of ``expressions``; ``extra`` symbols come first."""
         self._expressions = expressions
-        self._common: dict[tuple[str, Expr], int] = {}
+        self._common: dict[tuple[str, Expr], Rational] = {}
         self._roots: dict[Expr, int] = {}
         self.items: list[Expr] = list(extra)
         for expression in expressions:
             self._scan(expression)
-        for (kind, monomial), below in self._common.items():
-            self._add_family(kind, monomial, below)
+        for (kind, monomial), unit in self._common.items():
+            self._add_family(kind, monomial, unit)
         for base, degree in self._roots.items():
             self._want(Pow(base, Rational(1, degree)))
         self.index = {g: k for k, g in enumerate(self.items)}
@@ -129,14 +129,12 @@ class Generators:
             argument = sp.S.One if e is sp.E else e.args[0]
             kind = "exp" if isinstance(e, sp.exp) or e is sp.E else "turn"
             for coefficient, monomial in combination(argument):
-                key = (kind, monomial)
-                self._common[key] = math.lcm(self._common.get(key, 1), coefficient.q)
+                self._share((kind, monomial), coefficient)
         elif isinstance(e, Pow):
             plain, rest = e.exp.as_coeff_Add(rational=True)
             self._scan(e.base**plain)
             for coefficient, monomial in combination(rest):
-                key = ("exp", monomial * sp.log(e.base))
-                self._common[key] = math.lcm(self._common.get(key, 1), coefficient.q)
+                self._share(("exp", monomial * sp.log(e.base)), coefficient)
         else:
             other = rewritten(e) if not isinstance(e, Symbol) and _plain(e) else None
             if other is not None:
@@ -144,12 +142,18 @@ class Generators:
             else:
                 self._want(e)
 
-    def _add_family(self, kind: str, monomial: Expr, below: int) -> None:
+    def _share(self, key: tuple[str, Expr], coefficient: Rational) -> None:
+        """Keep the largest number of which all coefficients of a monomial are multiples."""
+        a, b = self._common.get(key, sp.S.Zero), coefficient
+        common = math.gcd(int(a.p * b.q), int(b.p * a.q))
+        self._common[key] = Rational(common, int(a.q * b.q))
+
+    def _add_family(self, kind: str, monomial: Expr, unit: Rational) -> None:
         if kind == "exp":
-            self._want(exponential(monomial / below))
+            self._want(exponential(monomial * unit))
         else:
-            self._want(sp.sin(monomial / below))
-            self._want(sp.cos(monomial / below))
+            self._want(sp.sin(monomial * unit))
+            self._want(sp.cos(monomial * unit))
 
     def _find_relations(self) -> list[tuple[int, int, Ratio]]:
         """(generator, degree, what its power of that degree equals)."""
@@ -240,18 +244,18 @@ class Generators:
     def _exponential(self, terms: Sequence[tuple[Rational, Expr]]) -> Ratio:
         product = self.number(1)
         for coefficient, monomial in terms:
-            below = self._common[("exp", monomial)]
-            free = self.generator(exponential(monomial / below))
-            product = product * self.power(free, int(coefficient * below))
+            unit = self._common[("exp", monomial)]
+            free = self.generator(exponential(monomial * unit))
+            product = product * self.power(free, int(coefficient / unit))
         return product
 
     def _turned(self, argument: Expr) -> tuple[Ratio, Ratio]:
         """(cos, sin) of a sum of multiples, by the addition formulas."""
         cosine, sine = self.number(1), self.number(0)
         for coefficient, monomial in combination(argument):
-            below = self._common[("turn", monomial)]
-            c1, s1 = (self.ratio(f(monomial / below)) for f in (sp.cos, sp.sin))
-            times = int(coefficient * below)
+            unit = self._common[("turn", monomial)]
+            c1, s1 = (self.ratio(f(monomial * unit)) for f in (sp.cos, sp.sin))
+            times = int(coefficient / unit)
             if abs(times) > 40:
                 raise NotRational("a multiple angle of high order")
             s1 = s1 if times >= 0 else -s1

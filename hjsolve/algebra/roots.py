@@ -84,7 +84,7 @@ def _factored(base: Expr) -> list[tuple[Expr, int]] | None:
         return None
     try:
         ring = Generators([base])
-        value = ring.ratio(base)
+        value = ring.reduce(ring.ratio(base))
         found = []
         for polynomial, side in ((value.numerator, 1), (value.denominator, -1)):
             content, factors = polynomial.factor()

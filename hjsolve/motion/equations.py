@@ -117,7 +117,7 @@ def _relation(
         for factor, anti in ((sp.S.One, quadrature.drift), (e.sign, quadrature.root)):
             if anti.integrand == 0:
                 continue
-            form = _written(anti)
+            form = anti.formula
             parts.append(factor * form.expression)
             where += [d for d in form.where if d not in where]
             valid += [v for v in form.valid if v not in valid]
@@ -125,15 +125,6 @@ def _relation(
                 present.append(e.coordinate)
     formula = Formula(Eq(Add(*parts), beta, evaluate=False), tuple(where), tuple(valid))
     return Relation(beta, formula, _says(separation, alpha, beta, present, time_part))
-
-
-def _written(anti: Antiderivative) -> Formula:
-    if anti.closed_forms:
-        return anti.closed_forms[0]
-    q = anti.variable
-    start = Symbol(f"{q.name}_0", real=True)
-    words = f"reference point: any fixed value of {q.name} in the interval of motion"
-    return Formula(Integral(anti.integrand, (q, start, q)), (Definition(start, free=words),))
 
 
 def _says(

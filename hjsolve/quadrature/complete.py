@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 
 import sympy as sp
-from sympy import Add, Eq, Expr, Function, Integral, Symbol
+from sympy import Add, Eq, Expr, Function, Symbol
 from sympy.core.relational import Relational
 
 from hjsolve.records import (
@@ -72,18 +72,7 @@ def _time_term(separation: Separation, integrate: Integrate) -> Expr | None:
         return None
     if not momentum.has(t):
         return momentum * t
-    return best(integrate(momentum, t, Domain())).expression
-
-
-def best(antiderivative: Antiderivative) -> Formula:
-    """The first closed form, or the integral left as it stands from a reference point."""
-    if antiderivative.closed_forms:
-        return antiderivative.closed_forms[0]
-    q = antiderivative.variable
-    start = Symbol(f"{q.name}_0", real=True)
-    words = f"reference point: any fixed value of {q.name} in the interval of motion"
-    integral = Integral(antiderivative.integrand, (q, start, q))
-    return Formula(integral, (Definition(start, free=words),))
+    return integrate(momentum, t, Domain()).formula.expression
 
 
 def _sum(terms: tuple[Term, ...], time_term: Expr) -> Formula:
@@ -99,7 +88,7 @@ def _sum(terms: tuple[Term, ...], time_term: Expr) -> Formula:
         ):
             if antiderivative.integrand == 0:
                 continue
-            form = best(antiderivative)
+            form = antiderivative.formula
             parts.append(factor * form.expression)
             where += [d for d in (*term.equation.where, *form.where) if d not in where]
             valid += [v for v in form.valid if v not in valid]
