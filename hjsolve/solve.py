@@ -3,11 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 from functools import lru_cache
 
 from hjsolve.algebra.budget import limit
-from hjsolve.algebra.roots import open_squares
 from hjsolve.certification import certify
 from hjsolve.errors import OutOfTime
 from hjsolve.motion import set_in_motion
@@ -36,7 +34,6 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
     tell = on_stage or (lambda _name, _found: None)
     integrate = lru_cache(maxsize=None)(quadrature)  # W, the relations and q(t) share integrals
     tell("separate", None)
-    hamiltonian = replace(hamiltonian, expression=open_squares(hamiltonian.expression))
     verdict = detect(hamiltonian)
     separation = Separation(hamiltonian, verdict)
     late: list[str] = []

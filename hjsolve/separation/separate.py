@@ -9,6 +9,7 @@ import sympy as sp
 from sympy import Add, Dummy, Eq, Expr, Function, Mul, Symbol
 
 from hjsolve.algebra.identity import vanish
+from hjsolve.algebra.roots import open_squares
 from hjsolve.records import (
     Constant,
     Hamiltonian,
@@ -55,6 +56,7 @@ def separate(hamiltonian: Hamiltonian, verdict: Verdict) -> Separation:
 class _Separator:
     def __init__(self, hamiltonian: Hamiltonian, verdict: Verdict) -> None:
         self.h = hamiltonian
+        self.expression = open_squares(hamiltonian.expression)
         self.verdict = verdict
         self.momentum = dict(zip(hamiltonian.coordinates, hamiltonian.momenta, strict=True))
         self.signs = {
@@ -64,14 +66,14 @@ class _Separator:
         self.letters = _Letters(hamiltonian)
 
     def run(self) -> Separation:
-        timing = self._timing(self.h.expression)
+        timing = self._timing(self.expression)
         ignorable = list(self.verdict.ignorable)
         solved_one = None
         if timing is not None and len(ignorable) == len(self.h.coordinates):
             solved_one = ignorable.pop(0)
         energy = Dummy("energy", real=True) if timing is not None else None
         held = {self.momentum[q]: Dummy("held", real=True) for q in ignorable}
-        k = timing.k if timing is not None else self.h.expression + self.time_momentum
+        k = timing.k if timing is not None else self.expression + self.time_momentum
         k = self._without_ignorable(k).xreplace(held)
         blocks = self._blocks(solved_one, timing is None)
         value = energy if energy is not None else sp.S.Zero
