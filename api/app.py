@@ -13,8 +13,8 @@ from api.errors import install_handlers
 from api.jobs.queue import Queue
 from api.jobs.store import State, Store
 from api.jobs.supervisor import Supervisor
-from api.routes import health, problems, solutions
-from api.schemas import ProblemRequest
+from api.routes import charts, health, motion, problems, solutions, transformations
+from api.schemas import ActionsRequest, ProblemRequest, TrajectoryRequest, TransformationRequest
 from api.settings import Settings
 from hjsolve import __version__
 
@@ -68,6 +68,33 @@ SOLUTION_SCHEMA: dict[str, Any] = {
 }
 
 
+TRANSFORMATION_SCHEMA: dict[str, Any] = {
+    "title": "Transformation",
+    "description": "A canonical transformation: both maps on the branch with positive new"
+    " variables, the other branches, its generating functions, the new Hamiltonian.",
+    "type": "object",
+    "required": ["canonical", "certificate"],
+    "properties": {
+        "canonical": {"type": ["boolean", "null"], "description": "null when undecided"},
+        "multiplier": {"type": "object"},
+        **{
+            name: {"type": ["object", "null"]}
+            for name in (
+                *("old_in_new", "new_in_old", "new_hamiltonian", "added_to_hamiltonian"),
+                *("generating_function", "obstruction", "certificate"),
+            )
+        },
+        **{
+            name: {"type": "array", "items": {"type": "object"}}
+            for name in (
+                *("generating_functions", "generating_functions_missing"),
+                *("relations", "branches"),
+            )
+        },
+    },
+}
+
+
 def create_app(settings: Settings, worker_module: str = "api.jobs.worker") -> FastAPI:
     """The application; its processes start and end with its lifespan.
 
@@ -101,7 +128,7 @@ def create_app(settings: Settings, worker_module: str = "api.jobs.worker") -> Fa
     app.state.store = store
     app.state.queue = Queue(settings, supervisor, store)
     app.state.streams = 0
-    for resource in (solutions, health, problems):
+    for resource in (solutions, motion, charts, health, problems, transformations):
         app.include_router(resource.router)
     install_handlers(app)
     app.openapi = lambda: _openapi(app)  # type: ignore[method-assign]
@@ -123,8 +150,10 @@ def _openapi(app: FastAPI) -> dict[str, Any]:
                     del operation["responses"]["422"]
         schemas["Problem"] = PROBLEM_SCHEMA
         schemas["Solution"] = SOLUTION_SCHEMA
-        schemas[ProblemRequest.__name__] = ProblemRequest.model_json_schema(
-            ref_template="#/components/schemas/{model}"
-        )
+        for model in (ProblemRequest, ActionsRequest, TrajectoryRequest, TransformationRequest):
+            schema = model.model_json_schema(ref_template="#/components/schemas/{model}")
+            schemas.update(schema.pop("$defs", {}))
+            schemas[model.__name__] = schema
+        schemas["Transformation"] = TRANSFORMATION_SCHEMA
         app.openapi_schema = document
     return app.openapi_schema

@@ -26,6 +26,7 @@ def main() -> NoReturn:
         arguments = module_arguments("api", *arguments)
     else:
         arguments = [f"--{options.form}", "--deadline", str(options.deadline)]
+        arguments += ["--task", options.command]
         arguments = module_arguments("api.solve_file", *arguments, "--", options.file)
     os.execve(sys.executable, arguments, child_environment())
 
@@ -45,6 +46,12 @@ def _parser() -> argparse.ArgumentParser:
     form = solve.add_mutually_exclusive_group()
     form.add_argument("--json", dest="form", action="store_const", const="json")
     form.add_argument("--latex", dest="form", action="store_const", const="latex")
+    transform = commands.add_parser("transform", help="transform canonically as a file says")
+    transform.add_argument("file", metavar="FILE", help="JSON or TOML; - for standard input")
+    transform.add_argument("--deadline", type=float, default=30.0, metavar="SECONDS")
+    transform.add_argument(
+        "--json", dest="form", action="store_const", const="json", default="text"
+    )
     return parser
 
 

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from typing import Any
+from collections.abc import Callable, Mapping, Sequence
+from typing import Any, TypeVar
 
-from pydantic import ValidationError
+from pydantic import BaseModel, ValidationError
 
 from api.errors import Problem, Refused
-from api.schemas import ProblemRequest
+from api.schemas import ActionsRequest, ProblemRequest, TransformationRequest
 from api.scope import refuse_beyond_scope
 from api.strict_json import NotJSON, read_json
 from hjsolve.errors import InputError
@@ -17,6 +17,8 @@ from hjsolve.errors import InputError
 MEMBERS = 64
 ALSO_NAMED = 20
 
+Model = TypeVar("Model", bound=BaseModel)
+
 
 def read_request(body: bytes) -> dict[str, Any]:
     """The problem of a request, every number in it as exact text.
@@ -24,22 +26,45 @@ def read_request(body: bytes) -> dict[str, Any]:
     Raises:
         Refused: 400 when the body is no JSON, 422 when it is no problem.
     """
+    request = _read(body, ProblemRequest, refuse_beyond_scope)
+    return request.model_dump(exclude_none=True, exclude={"parameter_conditions"})
+
+
+def read_motion_request(body: bytes, model: type[ActionsRequest]) -> dict[str, Any]:
+    """A request for actions or a trajectory, the numbers in it as exact text.
+
+    Raises:
+        Refused: 400 when the body is no JSON, 422 when it is no such request.
+    """
+    return _read(body, model, lambda value: None).model_dump()
+
+
+def read_transformation_request(body: bytes) -> dict[str, Any]:
+    """The transformation of a request, every number in it as exact text.
+
+    Raises:
+        Refused: 400 when the body is no JSON, 422 when it is no transformation.
+    """
+    request = _read(body, TransformationRequest, lambda value: None)
+    return request.model_dump(exclude_none=True)
+
+
+def _read(body: bytes, model: type[Model], refuse: Callable[[dict[str, Any]], None]) -> Model:
     try:
         value = read_json(body)
         if not isinstance(value, dict):
             raise InputError("An object was expected.", code="wrong-type")
         if len(value) > MEMBERS:
             raise InputError(f"There are {len(value)} members, most without a meaning.")
-        refuse_beyond_scope(value)
-        request = ProblemRequest.model_validate(value)
+        refuse(value)
+        return model.model_validate(value)
     except NotJSON as error:
         position = {} if error.position is None else {"position": error.position}
         raise Refused(Problem("not-json", str(error), position)) from None
     except InputError as error:
         raise Refused(input_problem(vars(error))) from None
     except ValidationError as error:
-        raise Refused(_validation_problem(error)) from None
-    return request.model_dump(exclude_none=True, exclude={"charts", "parameter_conditions"})
+        raise Refused(_validation_problem(error, model)) from None
 
 
 def input_problem(members: Mapping[str, Any]) -> Problem:
@@ -58,11 +83,13 @@ def json_pointer(location: Sequence[str | int]) -> str:
     )[:500]
 
 
-def _validation_problem(error: ValidationError) -> Problem:
+def _validation_problem(error: ValidationError, model: type[BaseModel]) -> Problem:
     first, *others = error.errors(include_url=False, include_context=False, include_input=False)
     message = first["msg"]
     if first["type"] == "extra_forbidden":
-        message = f"no such member; there are {', '.join(ProblemRequest.model_fields)}"
+        message = "no such member"
+        if len(first["loc"]) == 1:
+            message += f"; there are {', '.join(model.model_fields)}"
     members: dict[str, Any] = {"pointer": json_pointer(first["loc"]), "code": first["type"]}
     if others:
         members["also"] = [json_pointer(each["loc"]) for each in others[:ALSO_NAMED]]

@@ -6,23 +6,9 @@ from collections.abc import Mapping
 
 from hjsolve.errors import InputError
 
-CHARTS = (
-    'This version works in the given coordinates only; leave charts out or say "as-given",'
-    " and write the Hamiltonian in the coordinates that are to be tried."
-)
 PARAMETER_CONDITIONS = (
     "This version works for generic values of the parameters only; leave parameter_conditions out."
 )
-
-
-def refuse_charts(value: object) -> None:
-    """Take ``"as-given"``.
-
-    Raises:
-        InputError: it is something else.
-    """
-    if value != "as-given":
-        raise InputError(CHARTS, pointer="/charts", expected='"as-given"', code="not-in-scope")
 
 
 def refuse_parameter_conditions(value: object) -> None:
@@ -46,5 +32,4 @@ def refuse_beyond_scope(problem: Mapping[str, object]) -> None:
     Raises:
         InputError: see above.
     """
-    refuse_charts(problem.get("charts", "as-given"))
     refuse_parameter_conditions(problem.get("parameter_conditions", False))

@@ -1,7 +1,8 @@
 """Solve the problem of a file: ``python -m api.solve_file --text FILE``.
 
-Run by the command ``hjsolve solve``.  The solve is done in a forked child held to the deadline
-and the memory limit of the service; what it found before it was ended is printed all the same.
+Run by the commands ``hjsolve solve`` and, with ``--task transform``, ``hjsolve transform``.  The
+work is done in a forked child held to the deadline and the memory limit of the service; what it
+found before it was ended is printed all the same.
 """
 
 from __future__ import annotations
@@ -24,12 +25,18 @@ from typing import Any, BinaryIO, NoReturn
 
 from api.jobs.messages import Message, pack, receive
 from api.jobs.processes import die_with_parent, limit_process
-from api.jobs.worker import OUT_OF_MEMORY, perform, render_documents
+from api.jobs.worker import (
+    OUT_OF_MEMORY,
+    perform,
+    render_documents,
+    transformation_documents,
+)
 from api.scope import refuse_beyond_scope
 from api.settings import read_settings
 from api.strict_json import read_json
 from hjsolve.errors import InputError
-from hjsolve.records import Hamiltonian, Solution
+from hjsolve.records import Hamiltonian, Solution, Transformation
+from hjsolve.transform import for_person as transformation_for_person
 from hjsolve.writing import as_latex, for_person
 
 SOLVED, FAILED, BAD_INPUT = 0, 1, 2
@@ -65,7 +72,9 @@ def main(arguments: list[str]) -> int:
         print(f"hjsolve: {where}: {error}", file=sys.stderr)
         return BAD_INPUT
     text = json.dumps(problem, default=str).encode()
-    outcome = solve_in_child(text, options.form, options.deadline, settings.memory_bytes)
+    outcome = solve_in_child(
+        text, options.form, options.deadline, settings.memory_bytes, options.task
+    )
     return report(outcome, where, problem, options, settings.memory_mb)
 
 
@@ -91,7 +100,9 @@ def read_file(name: str) -> dict[str, Any]:
     return problem
 
 
-def solve_in_child(problem: bytes, form: str, deadline: float, memory_bytes: int) -> Outcome:
+def solve_in_child(
+    problem: bytes, form: str, deadline: float, memory_bytes: int, task: str = "solve"
+) -> Outcome:
     """Fork, have the child solve, and end it at the deadline (seconds)."""
     ours, theirs = socket.socketpair()
     parent = os.getpid()
@@ -99,7 +110,7 @@ def solve_in_child(problem: bytes, form: str, deadline: float, memory_bytes: int
     process = os.fork()
     if process == 0:
         ours.close()
-        _run_child(theirs, parent, problem, form, deadline, memory_bytes)
+        _run_child(theirs, parent, problem, form, deadline, memory_bytes, task)
     theirs.close()
     outcome = Outcome()
 
@@ -129,6 +140,7 @@ def _run_child(
     form: str,
     deadline: float,
     memory_bytes: int,
+    kind: str,
 ) -> NoReturn:
     def render(hamiltonian: Hamiltonian, solution: Solution) -> tuple[bytes, ...]:
         if form == "json":
@@ -136,11 +148,16 @@ def _run_child(
         write = as_latex if form == "latex" else for_person
         return (write(solution).encode(),)
 
+    def render_transformation(found: Transformation) -> tuple[bytes, ...]:
+        if form == "json":
+            return (transformation_documents(found)[0],)
+        return (transformation_for_person(found).encode(),)
+
     try:
         die_with_parent(parent)
         limit_process(memory_bytes)
-        task = Message({"kind": "solve", "seconds": deadline}, (problem,))
-        last = perform(task, connection.sendall, render)
+        task = Message({"kind": kind, "seconds": deadline}, (problem,))
+        last = perform(task, connection.sendall, render, render_transformation)
         connection.sendall(pack(last, *last.pop("parts", ())))
     except MemoryError:
         connection.sendall(OUT_OF_MEMORY)
@@ -198,7 +215,7 @@ def report(
     if outcome.found:
         sys.stdout.buffer.write(outcome.found.rstrip(b"\n") + b"\n")
         sys.stdout.buffer.flush()
-    if last is not None and last.kind == "solved":
+    if last is not None and last.kind in ("solved", "transformed"):
         return SOLVED
     if outcome.timed_out:
         why = f"it took longer than {options.deadline:g} s; --deadline gives it more"
@@ -261,6 +278,7 @@ def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(prog="hjsolve solve")
     parser.add_argument("file")
     parser.add_argument("--deadline", type=_deadline, default=60.0)
+    parser.add_argument("--task", choices=("solve", "transform"), default="solve")
     for form in ("text", "json", "latex"):
         parser.add_argument(f"--{form}", dest="form", action="store_const", const=form)
     return parser

@@ -8,12 +8,17 @@ and carries its assumptions from then on.
 
 from __future__ import annotations
 
+from collections.abc import Collection
 from dataclasses import dataclass
 from enum import StrEnum
-from typing import Literal
+from typing import TYPE_CHECKING, Literal, TypeAlias
 
 from sympy import Expr, Integral, Rational, S, Symbol, oo
 from sympy.core.relational import Relational
+
+if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
 
 
 class Truth(StrEnum):
@@ -52,6 +57,7 @@ class Hamiltonian:
     """H(q, p, t) as read.
 
     ``expression`` has the numeric parameters already put in, exactly;
+    ``charts`` is empty for the coordinates as given, ("search",), or names.
     ``numbers`` keeps them by name.  ``functions`` are the names of arbitrary
     functions of the problem.
     """
@@ -64,6 +70,20 @@ class Hamiltonian:
     numbers: tuple[tuple[str, Rational], ...]
     functions: tuple[str, ...]
     time: Symbol
+    charts: tuple[str, ...] = ()
+
+    @property
+    def names(self) -> frozenset[str]:
+        """All names of the problem; an answer's own names keep clear of them."""
+        symbols = {
+            *self.expression.free_symbols,
+            *self.coordinates,
+            *self.momenta,
+            self.time,
+            *(p.symbol for p in self.parameters),
+        }
+        numbers = {name for name, _ in self.numbers}
+        return frozenset({s.name for s in symbols} | numbers | set(self.functions))
 
     @property
     def explicit_time(self) -> bool:
@@ -184,7 +204,8 @@ class Separation:
     """A verdict with what follows from it.
 
     ``time_momentum`` is ∂S/∂t as a function of time and the constants (−E for
-    an autonomous system), None when time does not separate.  ``canonical`` is
+    an autonomous system), None when time does not separate; ``extended`` is the
+    letter for the momentum of time where a first integral holds it.  ``canonical`` is
     false when the constants are values at a base point rather than in the form
     of the literature.
     """
@@ -196,6 +217,7 @@ class Separation:
     reduced: tuple[ReducedEquation, ...] = ()
     time_momentum: Expr | None = None
     canonical: bool = True
+    extended: Symbol | None = None
 
 
 # --------------------------------------------------------------- quadrature
@@ -216,13 +238,18 @@ class Antiderivative:
     substitution: Expr | None = None
     reason: str = ""
 
-    @property
-    def formula(self) -> Formula:
-        """The first closed form, or the integral left as it stands from a reference point."""
+    def formula(self, taken: Collection[str]) -> Formula:
+        """The first closed form, or the integral left as it stands from a reference point.
+
+        The reference point's name keeps clear of the names ``taken``.
+        """
         if self.closed_forms:
             return self.closed_forms[0]
         q = self.variable
-        start = Symbol(f"{q.name}_0", real=True)
+        name = f"{q.name}_0"
+        while name in taken:
+            name += "_"
+        start = Symbol(name, real=True)
         words = f"reference point: any fixed value of {q.name} in the interval of motion"
         return Formula(Integral(self.integrand, (q, start, q)), (Definition(start, free=words),))
 
@@ -264,16 +291,27 @@ class Relation:
 
 
 @dataclass(frozen=True, slots=True)
+class OtherRegime:
+    """q(t) and p(t) of one coordinate in another regime of the constants."""
+
+    coordinate: Symbol
+    motion: Formula
+    momentum: Formula
+
+
+@dataclass(frozen=True, slots=True)
 class Motion:
     """The Jacobi relations, and q(t), p(t) where they invert.
 
     ``coordinates`` and ``momenta`` have one entry a coordinate; None where
-    only the implicit relations exist.
+    only the implicit relations exist for general constants.  ``others`` are
+    further regimes: other energies, boundaries between regimes.
     """
 
     relations: tuple[Relation, ...]
     coordinates: tuple[tuple[Symbol, Formula | None], ...]
     momenta: tuple[tuple[Symbol, Formula | None], ...]
+    others: tuple[OtherRegime, ...] = ()
 
 
 # ------------------------------------------------------------ certification
@@ -307,16 +345,24 @@ class Solution:
     integral: CompleteIntegral | None = None
     motion: Motion | None = None
     certificate: Certificate = Certificate()
+    charts: Charts | None = None
+    chart_used: int | None = None
+    posed: Hamiltonian | None = None
 
     @property
     def hamiltonian(self) -> Hamiltonian:
-        """The problem as read."""
+        """The Hamiltonian that was worked on: as read, or carried into the chart used."""
         return self.separation.hamiltonian
+
+    @property
+    def problem(self) -> Hamiltonian:
+        """The problem as read."""
+        return self.posed or self.separation.hamiltonian
 
 
 # ------------------------------------------------------------------- charts
 
-Geometry = Expr | tuple[Expr, ...] | tuple[tuple[Expr, ...], ...]
+Geometry: TypeAlias = Expr | tuple[Expr, ...] | tuple[tuple[Expr, ...], ...]
 """A number, a vector, or a list of vectors (rows)."""
 
 
@@ -329,6 +375,10 @@ class Chart:
     ``transformation`` gives each coordinate of the request in the chart's own,
     ``squares`` the squared scale factors of the kinetic energy ½ Σ weight·p_i²/h_i².
     ``positive`` are expressions that are positive all over the chart's domain.
+    The transformation in two steps: ``frame`` gives the request's coordinates
+    linearly in Cartesian ones of the chart's own, ``place`` those in the chart's.
+    ``blocks`` are the charts of the subspaces when the family is ``separable``;
+    one of a single coordinate has ``forms``, that coordinate in the request's own.
     """
 
     family: str
@@ -342,6 +392,9 @@ class Chart:
     weight: Expr = S.One
     positive: tuple[Expr, ...] = ()
     mass_map: tuple[tuple[Expr, ...], ...] | None = None
+    frame: tuple[tuple[Symbol, Expr], ...] = ()
+    place: tuple[tuple[Symbol, Expr], ...] = ()
+    blocks: tuple[Chart, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -392,7 +445,8 @@ class TransformationProblem:
     ``kinds`` has the kind (1 to 4) of each pair when ``function`` is given.
     ``given`` has the new variables as functions of the old ones (and time), or
     the old ones in the new ones when ``backward``; coordinates alone are to be
-    completed with their momenta.
+    completed with their momenta.  ``generator`` is the G whose flow by
+    ``parameter`` makes the new variables.
     """
 
     old: Frame
@@ -406,6 +460,8 @@ class TransformationProblem:
     function: Expr | None = None
     given: tuple[tuple[Symbol, Expr], ...] = ()
     backward: bool = False
+    generator: Expr | None = None
+    parameter: Symbol | None = None
 
 
 Map = tuple[tuple[Symbol, Formula], ...]
@@ -416,13 +472,15 @@ Map = tuple[tuple[Symbol, Formula], ...]
 class Branch:
     """One branch: both maps and the new Hamiltonian, None where no closed form was found.
 
-    ``positive`` tells whether points with all new variables positive lie in it.
+    ``positive`` tells whether points with all new variables positive lie in it;
+    ``added`` is K − H (K − cH with a multiplier c).
     """
 
     old_in_new: Map | None
     new_in_old: Map | None
     new_hamiltonian: Formula | None
     positive: bool = False
+    added: Formula | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -457,7 +515,8 @@ class Transformation:
     ``canonical`` is UNDECIDED when neither proved nor refuted; ``multiplier``
     is the constant that all brackets have when it is not 1.  ``branches`` has
     the one of the top level first.  ``relations`` are the implicit relations
-    of the generating function that was given.
+    of the generating function that was given; ``first_order`` are the new
+    variables up to the second power of a flow's parameter.
     """
 
     problem: TransformationProblem
@@ -469,3 +528,58 @@ class Transformation:
     generating_functions: tuple[GeneratingFunction, ...]
     obstruction: WrongBracket | None
     certificate: Certificate
+    first_order: Map = ()
+
+
+# ------------------------------------------------------- motion in numbers
+
+
+@dataclass(frozen=True, slots=True)
+class Estimate:
+    """A number with the bound of its error: proved where ``guaranteed``, else estimated."""
+
+    value: float
+    error: float
+    guaranteed: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Actions:
+    """What a start state does in each coordinate, in numbers.
+
+    Pairs (name, what); None where there is no such number.  ``kinds`` is
+    libration, rotation, unbounded, fixed or separatrix.  ``frequencies`` are
+    ∂H/∂J in radians per unit time, signed; ``mean_rates`` the mean velocities
+    of ignorable coordinates on a line; ``angles`` the angle variables of the
+    start, in [0, 2π).  ``resonances`` are small integer vectors k with
+    k·ω = 0 to the errors.  ``notes`` say in words what is missing and why.
+    """
+
+    constants: tuple[tuple[str, Estimate], ...]
+    turning_points: tuple[tuple[str, tuple[Estimate | None, Estimate | None]], ...]
+    kinds: tuple[tuple[str, str], ...]
+    actions: tuple[tuple[str, Estimate | None], ...]
+    frequencies: tuple[tuple[str, Estimate | None], ...]
+    mean_rates: tuple[tuple[str, Estimate | None], ...]
+    periods: tuple[tuple[str, Estimate | None], ...] = ()
+    angles: tuple[tuple[str, float | None], ...] = ()
+    resonances: tuple[tuple[int, ...], ...] = ()
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Trajectory:
+    """States at times: pairs (name, array of the length of ``times``).
+
+    ``error`` bounds the error of every number, absolute (an estimate);
+    ``errors`` the same for each name.  ``checked`` is the largest difference
+    from direct integration of Hamilton's equations, where that was asked for.
+    """
+
+    times: NDArray[np.float64]
+    coordinates: tuple[tuple[str, NDArray[np.float64]], ...]
+    momenta: tuple[tuple[str, NDArray[np.float64]], ...]
+    error: float
+    errors: tuple[tuple[str, float], ...]
+    method: str
+    checks: tuple[Check, ...] = ()

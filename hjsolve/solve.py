@@ -3,20 +3,35 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass, replace
 from functools import lru_cache
+
+from sympy import Expr, Symbol
 
 from hjsolve.algebra.budget import limit
 from hjsolve.certification import certify
-from hjsolve.errors import OutOfTime
+from hjsolve.charts import CHARTS, in_chart, named, search, upright
+from hjsolve.errors import Fault, InputError, OutOfTime
 from hjsolve.motion import set_in_motion
 from hjsolve.quadrature import integrate as quadrature
 from hjsolve.quadrature.complete import complete
-from hjsolve.records import Certificate, Check, Hamiltonian, Separation, Solution, Truth
+from hjsolve.records import (
+    Antiderivative,
+    Certificate,
+    Charts,
+    Check,
+    Domain,
+    Hamiltonian,
+    Separation,
+    Solution,
+    Truth,
+    Verdict,
+)
 from hjsolve.separation import detect, separate
 
 OnStage = Callable[[str, Solution | None], None]
 
-SECONDS = {"separate": 20.0, "integrate": 20.0, "motion": 15.0, "certify": 20.0}
+SECONDS = {"charts": 30.0, "separate": 20.0, "integrate": 20.0, "motion": 15.0, "certify": 20.0}
 """How long a stage may take before the ones after it go on without it."""
 
 
@@ -31,24 +46,42 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
         InputError: a coordinate turns out to have no momentum in H.
         Fault: a result was refuted by its own certificate.
     """
+    posed = hamiltonian
     tell = on_stage or (lambda _name, _found: None)
-    integrate = lru_cache(maxsize=None)(quadrature)  # W, the relations and q(t) share integrals
+    integrate = lru_cache(maxsize=None)(_contained)  # W, the relations and q(t) share integrals
     tell("separate", None)
-    verdict = detect(hamiltonian)
-    separation = Separation(hamiltonian, verdict)
     late: list[str] = []
+    verdict = detect(hamiltonian)
+    placed = Placed(hamiltonian, verdict)
+    if hamiltonian.charts:
+        tell("charts", Solution(Separation(hamiltonian, verdict)))
+        try:
+            with limit(SECONDS["charts"]):
+                placed = _placed(hamiltonian, verdict)
+        except OutOfTime:
+            late.append("the coordinate systems: stopped at the time limit of their stage")
+        except (InputError, Fault):
+            raise
+        except Exception as error:
+            late.append(_broken("the coordinate systems", error))
+    hamiltonian, verdict = placed.hamiltonian, placed.verdict
+    separation = Separation(hamiltonian, verdict)
     try:
         with limit(SECONDS["separate"]):
             separation = separate(hamiltonian, verdict)
     except OutOfTime:
-        late.append("the separated equations")
+        late.append("the separated equations: stopped at the time limit of their stage")
+    except Exception as error:
+        late.append(_broken("the separated equations", error))
     tell("integrate", Solution(separation))
     integral = None
     try:
         with limit(SECONDS["integrate"]):
             integral = complete(separation, integrate)
     except OutOfTime:
-        late.append("the complete integral")
+        late.append("the complete integral: stopped at the time limit of its stage")
+    except Exception as error:
+        late.append(_broken("the complete integral", error))
     tell("motion", Solution(separation, integral))
     motion = None
     if integral is not None:
@@ -56,17 +89,111 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
             with limit(SECONDS["motion"]):
                 motion = set_in_motion(separation, integral, integrate)
         except OutOfTime:
-            late.append("the equations of motion")
+            late.append("the equations of motion: stopped at the time limit of their stage")
+        except Exception as error:
+            late.append(_broken("the equations of motion", error))
     tell("certify", Solution(separation, integral, motion))
     unfinished = tuple(
-        Check(f"{what}: stopped at the time limit of its stage", Truth.UNDECIDED, "none")
+        Check(
+            what if ":" in what else f"{what}: stopped at the time limit", Truth.UNDECIDED, "none"
+        )
         for what in late
     )
+    solution = Solution(separation, integral, motion)
+    for kept in (solution, Solution(separation), Solution(Separation(hamiltonian, verdict))):
+        try:
+            certificate = _certified(kept)
+        except Fault as fault:
+            text = f"{fault}; what rests on it is left out"
+            unfinished = (*unfinished, Check(text, Truth.UNDECIDED, "none"))
+            continue
+        found = placed.charts.checks if placed.charts else ()
+        return replace(
+            kept,
+            certificate=Certificate((*found, *certificate.checks, *unfinished)),
+            charts=placed.charts,
+            chart_used=placed.used,
+            posed=posed,
+        )
+    raise Fault("the verdict itself was refuted by its certificate")
+
+
+def refuse_unknown_charts(hamiltonian: Hamiltonian) -> None:
+    """Refuse names of coordinate systems that the catalogue does not have.
+
+    Raises:
+        InputError: pointing at ``/charts``.
+    """
+    if hamiltonian.charts in ((), ("search",)):
+        return
+    known = [c.family for c in CHARTS if c.dimension == len(hamiltonian.coordinates)]
+    for name in hamiltonian.charts:
+        if name.rsplit("/", 1)[-1] not in known:
+            raise InputError(
+                f"{name!r} is no coordinate system of the catalogue for "
+                f"{len(hamiltonian.coordinates)} coordinates",
+                pointer="/charts",
+                expected=", ".join(known) or "a problem of two or three coordinates",
+                code="unknown-chart",
+            )
+
+
+@dataclass(frozen=True, slots=True)
+class Placed:
+    """The Hamiltonian in the coordinates that are worked in, and how it came there."""
+
+    hamiltonian: Hamiltonian
+    verdict: Verdict
+    charts: Charts | None = None
+    used: int | None = None
+
+
+def _placed(hamiltonian: Hamiltonian, verdict: Verdict) -> Placed:
+    """The charts asked for; the first that separates is used where the given one does not."""
+    if hamiltonian.charts == ("search",):
+        charts = search(hamiltonian, detect)
+        tried = charts.found
+    else:
+        tried = tuple(named(hamiltonian, name) for name in hamiltonian.charts)
+        charts = Charts((), False, reason="only the coordinate systems named were tried")
+    separating = []
+    for chart in tried:
+        carried = in_chart(hamiltonian, upright(chart))
+        found = detect(carried)
+        if found.separability == "complete":
+            separating.append((chart, carried, found))
+    charts = replace(charts, found=tuple(chart for chart, _, _ in separating))
+    if len(separating) < len(tried) and hamiltonian.charts == ("search",):
+        charts = replace(charts, complete=False, reason="a system found was not confirmed")
+    if verdict.separability == "complete" or not separating:
+        return Placed(hamiltonian, verdict, charts)
+    return Placed(separating[0][1], separating[0][2], charts, 0)
+
+
+def _certified(solution: Solution) -> Certificate:
     try:
         with limit(SECONDS["certify"]):
-            certificate = certify(separation, integral, motion)
+            return certify(solution.separation, solution.integral, solution.motion)
     except OutOfTime:
-        certificate = Certificate(
-            (Check("the certificate: stopped at its time limit", Truth.UNDECIDED, "none"),)
-        )
-    return Solution(separation, integral, motion, Certificate(certificate.checks + unfinished))
+        what = "the certificate: stopped at its time limit"
+    except Fault:
+        raise
+    except Exception as error:
+        what = _broken("the certificate", error)
+    return Certificate((Check(what, Truth.UNDECIDED, "none"),))
+
+
+def _contained(integrand: Expr, variable: Symbol, domain: Domain) -> Antiderivative:
+    """The quadrature, whose failure on one integrand is no reason to lose the others."""
+    try:
+        return quadrature(integrand, variable, domain)
+    except OutOfTime:
+        raise
+    except Exception as error:
+        reason = _broken("the quadrature", error)
+        return Antiderivative(integrand, variable, (), "unevaluated", None, reason)
+
+
+def _broken(what: str, error: Exception) -> str:
+    """A fault of this program in one stage: what the others found is worth keeping."""
+    return f"{what}: left out, {type(error).__name__} in this program ({error})"[:300]

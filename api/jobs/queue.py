@@ -19,6 +19,9 @@ log = logging.getLogger("uvicorn.error")
 #: Reading is bounded by itself to well under a second; this ends a reader that is not.
 READ_SECONDS = 5.0
 
+#: A transformation is answered within this time, its wait for a worker included.
+TRANSFORM_SECONDS = 30.0
+
 
 class Queue:
     """Reads problems, queues them first come first served, and keeps what comes out."""
@@ -30,6 +33,8 @@ class Queue:
         self._slots = asyncio.Semaphore(settings.workers)
         self._reading = asyncio.Semaphore(1)
         self._reads_waiting = 0
+        self._transforms = 0
+        self._evaluations = 0
         self._work: dict[str, asyncio.Task[None]] = {}
         self._usual_seconds = 1.0
         self.draining = False
@@ -71,6 +76,43 @@ class Queue:
         task.add_done_callback(lambda _: self._close(job, task))
         return job
 
+    async def transform(self, problem: bytes) -> tuple[bytes, bytes]:
+        """The answer of a transformation, without and with MathML.
+
+        Raises:
+            Refused: it cannot be meant, took too long or too much memory, too many wait, or the
+                service drains.
+        """
+        self._refuse_when_draining()
+        if self._transforms >= self._settings.queue_limit:
+            raise self._too_many("Too many transformations are waiting.")
+        stop = time.monotonic() + TRANSFORM_SECONDS
+        self._transforms += 1
+        try:
+            try:
+                async with asyncio.timeout(TRANSFORM_SECONDS):
+                    await self._slots.acquire()
+            except TimeoutError:
+                raise self._too_many("Every worker is busy with longer work.") from None
+            try:
+                left = max(stop - time.monotonic(), 0.1)
+                last = await self._supervisor.run(
+                    {"kind": "transform", "seconds": left}, problem, left, lambda message: None
+                )
+            finally:
+                self._slots.release()
+        except TimeoutError:
+            limit = f"{TRANSFORM_SECONDS:g} s"
+            detail = f"The transformation took longer than {limit}; make it smaller."
+            raise Refused(Problem("out-of-time", detail)) from None
+        except WorkerDied as error:
+            raise Refused(Problem("worker-died", f"In the transformation: {error}.")) from None
+        finally:
+            self._transforms -= 1
+        if last.kind != "transformed":
+            raise Refused(self._failure(last))
+        return last.parts[0], last.parts[1]
+
     async def cancel(self, job: Job) -> None:
         """End a job that has not ended; what was found is kept."""
         task = self._work.get(job.id)
@@ -88,6 +130,42 @@ class Queue:
             task.cancel()
         if self._work:
             await asyncio.wait(tuple(self._work.values()))
+
+    async def evaluate(self, kind: str, work: bytes, answer: str) -> bytes:
+        """Have a worker put a motion into numbers, within the deadline of a solve.
+
+        Args:
+            kind: ``actions`` or ``trajectory``.
+            work: JSON text with ``problem`` and ``request``.
+            answer: ``json`` or ``npz``.
+
+        Raises:
+            Refused: the request cannot be meant, the work ran out of time or memory, too
+                much waits, or the service drains.
+        """
+        self._refuse_when_draining()
+        if self._evaluations >= self._settings.queue_limit:
+            raise self._too_many("Too many motions wait to be put into numbers.")
+        self._evaluations += 1
+        deadline = self._settings.deadline_seconds
+        try:
+            async with self._slots:
+                last = await self._supervisor.run(
+                    {"kind": kind, "seconds": deadline, "answer": answer},
+                    work,
+                    deadline,
+                    lambda message: None,
+                )
+        except TimeoutError:
+            detail = f"The numbers took longer than {deadline:g} s; ask for fewer."
+            raise Refused(Problem("out-of-time", detail)) from None
+        except WorkerDied as error:
+            raise Refused(Problem("worker-died", f"In making the numbers: {error}.")) from None
+        finally:
+            self._evaluations -= 1
+        if last.kind != "numbers":
+            raise Refused(self._failure(last))
+        return last.parts[0]
 
     async def _read(self, problem: bytes) -> Message:
         """Have a worker read it: whatever reading does, the service goes on."""

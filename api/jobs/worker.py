@@ -1,12 +1,16 @@
 """What runs in a worker: read a problem, or solve one and tell of every stage.
 
 Tasks come in on a pipe as messages ``read`` and ``solve``, each with the deadline in ``seconds``
-and the problem as its part.
+and the problem as its part; and ``actions`` and ``trajectory``, whose part holds the ``problem``
+and the ``request``, and whose ``answer`` is json or npz; and ``transform``, whose part is the
+transformation.
 Out goes ``accepted``, then for a solve one ``stage`` at the beginning of each stage with what
 was found so far, and last one of
 
     read        ``id``; parts: the problem as read, once a notation set
     solved      parts: the solution, once a notation set
+    transformed parts: the transformation, once a notation set
+    numbers     parts: the answer to ``actions`` or ``trajectory``
     refused     the members of ``hjsolve.errors.InputError``
     failed      ``problem`` (out-of-memory, out-of-time, answer-too-large, refuted, fault),
                 ``detail``, and ``traceback`` of a fault
@@ -22,13 +26,15 @@ import traceback
 from collections.abc import Callable
 from typing import Any
 
+from api.jobs.in_numbers import answer_in_numbers
 from api.jobs.messages import SIZE_LIMIT, Message, pack, receive
 from api.jobs.processes import limit_cpu, limit_process, peak_memory_bytes
 from hjsolve import __version__
 from hjsolve.errors import Fault, InputError, OutOfTime
 from hjsolve.reading import read_problem
-from hjsolve.records import Hamiltonian, Solution
-from hjsolve.solve import solve
+from hjsolve.records import Hamiltonian, Solution, Transformation
+from hjsolve.solve import refuse_unknown_charts, solve
+from hjsolve.transform import document, transform
 from hjsolve.writing import content_id, problem_document, solution_document
 
 #: Time on the processor beyond the deadline after which the kernel ends a worker.
@@ -41,6 +47,7 @@ TRACEBACK_CHARACTERS = 5000
 
 Send = Callable[[bytes], None]
 Render = Callable[[Hamiltonian, Solution], tuple[bytes, ...]]
+RenderTransformation = Callable[[Transformation], tuple[bytes, ...]]
 
 
 def serve(connection: socket.socket, memory_bytes: int) -> None:
@@ -60,7 +67,12 @@ def serve(connection: socket.socket, memory_bytes: int) -> None:
         pass  # the service is gone, and nobody is left to tell
 
 
-def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
+def perform(
+    task: Message,
+    send: Send,
+    render: Render,
+    render_transformation: RenderTransformation | None = None,
+) -> dict[str, Any]:
     """Do one task; the header of the last message, its parts under ``parts``.
 
     Raises:
@@ -69,7 +81,13 @@ def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
     """
     limit_cpu(float(task.header["seconds"]) + CPU_MARGIN_SECONDS)
     try:
+        if task.kind in ("actions", "trajectory"):
+            return _numbers(task)
+        if task.kind == "transform":
+            rendered = render_transformation or transformation_documents
+            return _sized("transformed", rendered(transform(json.loads(task.parts[0]))))
         hamiltonian = read_problem(json.loads(task.parts[0]))
+        refuse_unknown_charts(hamiltonian)
         if task.kind == "read":
             document = {"problem": problem_document(hamiltonian)}
             parts = (_json_text(without_mathml(document)), _json_text(document))
@@ -100,6 +118,17 @@ def perform(task: Message, send: Send, render: Render) -> dict[str, Any]:
         }
 
 
+def _numbers(task: Message) -> dict[str, Any]:
+    work = json.loads(task.parts[0])
+    text = answer_in_numbers(
+        task.kind, work["problem"], work["request"], str(task.header.get("answer", "json"))
+    )
+    if len(text) > SIZE_LIMIT:
+        detail = f"the answer takes {len(text)} bytes; at most {SIZE_LIMIT} are sent"
+        return {"kind": "failed", "problem": "answer-too-large", "detail": detail}
+    return {"kind": "numbers", "parts": (text,)}
+
+
 def _solve(hamiltonian: Hamiltonian, send: Send, render: Render) -> dict[str, Any]:
     def on_stage(stage: str, found: Solution | None) -> None:
         parts = () if found is None else render(hamiltonian, found)
@@ -107,12 +136,22 @@ def _solve(hamiltonian: Hamiltonian, send: Send, render: Render) -> dict[str, An
             parts = ()
         send(pack({"kind": "stage", "stage": stage}, *parts))
 
-    parts = render(hamiltonian, solve(hamiltonian, on_stage))
+    return _sized("solved", render(hamiltonian, solve(hamiltonian, on_stage)))
+
+
+def _sized(kind: str, parts: tuple[bytes, ...]) -> dict[str, Any]:
+    """The last message of an answer, unless the answer is too large to be sent."""
     size = sum(map(len, parts))
     if size > SIZE_LIMIT:
         detail = f"the answer takes {size} bytes; at most {SIZE_LIMIT} are sent"
         return {"kind": "failed", "problem": "answer-too-large", "detail": detail}
-    return {"kind": "solved", "parts": parts}
+    return {"kind": kind, "parts": parts}
+
+
+def transformation_documents(found: Transformation) -> tuple[bytes, bytes]:
+    """A transformation as JSON text, without and with MathML."""
+    full = document(found, ("infix", "latex", "mathml"))
+    return _json_text(without_mathml(full)), _json_text(full)
 
 
 def render_documents(hamiltonian: Hamiltonian, solution: Solution) -> tuple[bytes, bytes]:

@@ -7,7 +7,7 @@ that does not contain 0 is a proof that the expression is not identically 0.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass, field
 from fractions import Fraction
@@ -16,6 +16,7 @@ from typing import Any
 from flint import arb, ctx, fmpq
 from sympy import Symbol
 
+from hjsolve.algebra import elliptic
 from hjsolve.algebra.graph import Graph
 
 Pair = tuple[int, int]
@@ -88,12 +89,16 @@ def precision(bits: int) -> Iterator[None]:
 
 
 class BallWalk:
-    """One evaluation of a graph; raises OutsideDomain, Imprecise, NotSupported."""
+    """One evaluation of a graph; raises OutsideDomain, Imprecise, NotSupported.
+
+    A coordinate of ``point`` that is no rational number is a function without
+    arguments that gives a ball at the working precision.
+    """
 
     def __init__(
         self,
         graph: Graph,
-        point: Mapping[Symbol, Fraction],
+        point: Mapping[Symbol, Fraction | Callable[[], Any]],
         functions: Mapping[str, Ridges],
         variables: Mapping[Symbol, int] | None = None,
         pairs: Collection[Pair] = (),
@@ -113,8 +118,10 @@ class BallWalk:
                 if not jet.value.is_finite():
                     raise Imprecise
                 out.append(jet)
-        except ZeroDivisionError as error:
+        except (ZeroDivisionError, elliptic.NotReal) as error:
             raise OutsideDomain from error
+        except elliptic.Wide as error:
+            raise Imprecise from error
         return [out[r] for r in self.graph.roots]
 
     def _node(self, op: str, payload: Any, children: list[BallJet]) -> BallJet:
@@ -124,7 +131,8 @@ class BallWalk:
             case "pi":
                 return BallJet(arb.pi())
             case "symbol":
-                jet = BallJet(exact(self.point[payload]))
+                at = self.point[payload]
+                jet = BallJet(at() if callable(at) else exact(at))
                 if payload in self.variables:
                     jet.first[self.variables[payload]] = arb(1)
                 return jet
@@ -137,6 +145,11 @@ class BallWalk:
                 return product
             case "atan2" | "call":
                 return self._several(op, payload, children)
+            case "delta":
+                radicand, u, m = children
+                f, first, second = _power_slopes(radicand.value, 1, 2)
+                sign = elliptic.delta_sign(u.value, m.value)
+                return self._chain(radicand, sign * f, sign * first, sign * second)
             case _:
                 return self._chain(children[0], *self._slopes(op, payload, children[0]))
 
@@ -232,7 +245,7 @@ class BallWalk:
         else:
             name, orders = payload
             if name not in self.functions:
-                raise NotSupported(name)
+                return self._special(name, orders, children)
             stand_in = self.functions[name]
             unit = [tuple(int(k == i) for k in range(n)) for i in range(n)]
             value = stand_in.derivative(orders, args)
@@ -240,6 +253,32 @@ class BallWalk:
             second = [
                 [stand_in.derivative(_add(_add(orders, e), d), args) for d in unit] for e in unit
             ]
+        return self._composed(value, children, first, second)
+
+    def _special(self, name: str, orders: tuple[int, ...], children: list[BallJet]) -> BallJet:
+        """An elliptic function, with the derivatives its arguments need."""
+        if any(orders) or not elliptic.known(name):
+            raise NotSupported(name)
+        args = [c.value for c in children]
+        n = len(args)
+
+        if name == "jacobi_am" and children[1].first and not args[1] < 1:
+            raise NotSupported("the derivative of am by m where m is not below 1")
+
+        def slope(*by: int) -> Any:
+            if not all(children[k].first for k in by) or (len(by) == 2 and not self.pairs):
+                return arb(0)
+            letters, graph = elliptic.partial(name, n, by)
+            at = {x: lambda a=a: a for x, a in zip(letters, args, strict=True)}
+            return BallWalk(graph, at, {}).run()[0].value
+
+        first = [slope(i) for i in range(n)]
+        second = [[slope(min(i, j), max(i, j)) for j in range(n)] for i in range(n)]
+        return self._composed(elliptic.value(name, args), children, first, second)
+
+    def _composed(
+        self, value: Any, children: list[BallJet], first: list[Any], second: list[list[Any]]
+    ) -> BallJet:
         out = BallJet(value)
         for i, a in enumerate(children):
             for k, d in a.first.items():

@@ -28,15 +28,26 @@ Gradient = Callable[[int, int], Any]
 
 
 def brackets(
-    h: Hamiltonian, functions: Sequence[Expr], ranges: Mapping[Symbol, Range], tries: int = 24
+    h: Hamiltonian,
+    functions: Sequence[Expr],
+    ranges: Mapping[Symbol, Range],
+    time_momentum: Symbol | None = None,
+    tries: int = 24,
 ) -> tuple[list[Finding], list[Finding]]:
-    """({F_a, F_b} = 0 for all pairs, ∂F/∂t + {F, H} = 0 for each), as findings."""
-    variables = (*h.coordinates, *h.momenta, h.time)
-    n = len(h.coordinates)
+    """({F_a, F_b} = 0 for all pairs, dF/dt = 0 for each), as findings.
+
+    With ``time_momentum`` the functions live on the extended phase space: time
+    is one more coordinate, and H + p_t the Hamiltonian.
+    """
+    more = () if time_momentum is None else (time_momentum,)
+    coordinates = (*h.coordinates, *((h.time,) if more else ()))
+    variables = (*coordinates, *h.momenta, *more, *(() if more else (h.time,)))
+    n = len(coordinates)
+    whole = h.expression if time_momentum is None else h.expression + time_momentum
     commuting = [_bracket(a, b, n) for a, b in combinations(range(len(functions)), 2)]
-    conserved = [_rate(a, n) for a in range(len(functions))]
+    conserved = [_bracket(a, -1, n) if more else _rate(a, n) for a in range(len(functions))]
     try:
-        graph = Graph([*functions, h.expression])
+        graph = Graph([*functions, whole])
     except (TooLarge, TypeError):
         unknown = Finding(Truth.UNDECIDED, "graph too large")
         return [unknown] * len(commuting), [unknown] * len(conserved)

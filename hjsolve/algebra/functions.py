@@ -12,7 +12,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Any
 
-import mpmath
+import mpmath  # type: ignore[import-untyped]
 from sympy import Expr, Function, Integer, S, elliptic_e, sqrt
 from sympy.core.function import ArgumentIndexError
 
@@ -36,6 +36,8 @@ class _Special(Function):
             with mpmath.workprec(working):
                 arguments = [a._to_mpmath(working) for a in self.args]
                 value = self.number(*arguments)
+                if self.on_reals and not any(isinstance(a, mpmath.mpc) for a in arguments):
+                    value = mpmath.re(value)  # m outside of (0, 1) is reached through complex m
         except (ValueError, TypeError, ZeroDivisionError, NotImplementedError):
             return None
         return Expr._from_mpmath(value, prec)
@@ -76,7 +78,11 @@ class _Even(_Special):
 
 
 def _excess(u: Expr, m: Expr) -> Expr:
-    """∂am/∂m divided by dn: ((1 − m)u − E(am, m) + m sn cn/dn)/(2m(1 − m))."""
+    """∂am/∂m divided by dn: ((1 − m)u − E(am, m) + m sn cn/dn)/(2m(1 − m)).
+
+    For m > 1 only up to the first zero of dn: there am turns back and E(am, m)
+    is no longer ∫dn² du.
+    """
     s, c, d = jacobi_sn(u, m), jacobi_cn(u, m), jacobi_dn(u, m)
     above = (1 - m) * u - elliptic_e(jacobi_am(u, m), m) + m * s * c / d
     return above / (2 * m * (1 - m))
@@ -144,7 +150,7 @@ class jacobi_am(_Odd):  # noqa: N801
         if mpmath.im(u) or mpmath.im(m):
             raise ValueError("the amplitude of a complex argument has branches")
         s, c = (mpmath.ellipfun(name, u, m=m) for name in ("sn", "cn"))
-        principal = mpmath.atan2(s, c)
+        principal = mpmath.atan2(mpmath.re(s), mpmath.re(c))
         if m >= 1:
             return principal
         # am − πu/(2K) has period 2K and stays within a quarter turn
@@ -170,8 +176,8 @@ class carlson_rf(_Special):  # noqa: N801
         """∂R_F/∂x = −R_D(y, z, x)/6, and likewise by y and z."""
         if argindex not in (1, 2, 3):
             raise ArgumentIndexError(self, argindex)
-        x, y, z = (*self.args[argindex:], *self.args[:argindex])
-        return -carlson_rd(x, y, z) / 6
+        turned = [self.args[(argindex + k) % 3] for k in range(3)]
+        return -carlson_rd(*turned) / 6
 
     @staticmethod
     def number(*args: Any) -> Any:
@@ -196,7 +202,8 @@ class carlson_rc(_Special):  # noqa: N801
     @staticmethod
     def number(*args: Any) -> Any:
         """The value at mpmath numbers."""
-        return mpmath.elliprc(*args)
+        value = mpmath.elliprc(*args)
+        return value if any(isinstance(a, mpmath.mpc) for a in args) else mpmath.re(value)
 
 
 class carlson_rd(_Special):  # noqa: N801
@@ -205,11 +212,11 @@ class carlson_rd(_Special):  # noqa: N801
     nargs = 3
 
     def fdiff(self, argindex: int = 1) -> Expr:
-        """Homogeneity and ∂R_D/∂x = (R_D(y, z, x) − R_D(x, y, z))/(2(x − z))·… by cases."""
+        """∂R_D/∂x = (R_D(x, y, z) − R_D(y, z, x))/(2(z − x)); by z from homogeneity."""
         x, y, z = self.args
         if argindex in (1, 2):
             a, b = (x, y) if argindex == 1 else (y, x)
-            return (carlson_rd(b, z, a) - self) / (2 * (z - a))
+            return (self - carlson_rd(b, z, a)) / (2 * (z - a))
         if argindex == 3:
             # Euler: x∂_x + y∂_y + z∂_z = −3/2
             return -(Integer(3) / 2 * self + x * self.fdiff(1) + y * self.fdiff(2)) / z
@@ -243,7 +250,9 @@ class carlson_rj(_Special):  # noqa: N801
     @staticmethod
     def number(*args: Any) -> Any:
         """The value at mpmath numbers."""
-        return mpmath.elliprj(*args)
+        value = mpmath.elliprj(*args)
+        # the principal value for p < 0 is the real part, DLMF 19.20.14
+        return value if any(isinstance(a, mpmath.mpc) for a in args) else mpmath.re(value)
 
 
 class weierstrass_p(_Special):  # noqa: N801
@@ -274,5 +283,3 @@ class weierstrass_p(_Special):  # noqa: N801
 
 JACOBI = (jacobi_sn, jacobi_cn, jacobi_dn, jacobi_am)
 CARLSON = (carlson_rf, carlson_rc, carlson_rd, carlson_rj)
-
-

@@ -19,11 +19,17 @@ from typing import Any
 import sympy as sp
 from sympy import Add, Expr, Mul, Pow, Rational, Symbol
 
+from hjsolve.algebra.functions import jacobi_am, jacobi_cn, jacobi_dn, jacobi_sn
+
 NODE_LIMIT = 60_000
 """A graph larger than this is not evaluated; the caller says so."""
 
 EXPAND_LIMIT = 150
 """An argument of exp, sin, cos with more operations is not multiplied out."""
+
+
+ANGLE_LIMIT = 4
+"""Multiples of an inverse circular function above this keep their angle."""
 
 
 class TooLarge(Exception):
@@ -35,7 +41,9 @@ class Node:
     """One operation.
 
     ``op`` is one of ``number pi symbol add mul power exp log sin cos asin atan
-    atan2 lambert abs sign call``.  ``args`` are positions in the graph.  ``payload``:
+    atan2 lambert abs sign delta call``.  ``delta`` is dn(u, m) with arguments
+    1 − m sn², u, m: a root of the first on a branch of its own, since dn changes
+    its sign where m > 1.  ``args`` are positions in the graph.  ``payload``:
     the number, the symbol, the rational exponent, the rational coefficients of
     the monomials (exp, sin, cos: args are the argument as a whole, then the
     monomials) or of the factors (log: likewise), or (name, derivative orders) of a called function.
@@ -95,6 +103,8 @@ class Graph:
             return self._node("mul", at)
         if isinstance(e, Pow) and isinstance(e.exp, Rational):
             return self._node("power", at, (int(e.exp.p), int(e.exp.q)))
+        if _opened(e) is not None:
+            return at[0]
         if isinstance(e, (sp.exp, sp.sin, sp.cos)):
             coefficients = tuple((int(c.p), int(c.q)) for c, _ in combination(e.args[0]))
             return self._node(type(e).__name__, at, coefficients)
@@ -104,6 +114,8 @@ class Graph:
         simple = _SIMPLE.get(type(e))
         if simple is not None:
             return self._node(simple, at)
+        if isinstance(e, jacobi_dn):
+            return self._node("delta", at)
         other = rewritten(e)
         if other is not None:
             return at[0]
@@ -131,6 +143,10 @@ def rewritten(e: Expr) -> Expr | None:
         return power if plain == 0 else Mul(e.base**plain, power, evaluate=False)
     u: Any = e.args[0] if e.args else None
     match e:
+        case jacobi_sn():
+            return sp.sin(jacobi_am(*e.args))
+        case jacobi_cn():
+            return sp.cos(jacobi_am(*e.args))
         case sp.tan():
             return sp.sin(u) / sp.cos(u)
         case sp.cot():
@@ -164,6 +180,23 @@ def rewritten(e: Expr) -> Expr | None:
     return None
 
 
+def _opened(e: Expr) -> Expr | None:
+    """|uv| as |u||v|; sin, cos of n·asin x and the like, n a small integer, without the angle."""
+    if isinstance(e, (sp.Abs, sp.sign)) and isinstance(e.args[0], Mul):
+        return Mul(*(e.func(factor) for factor in e.args[0].args))
+    if not isinstance(e, (sp.sin, sp.cos)):
+        return None
+    times, inner = e.args[0].as_coeff_Mul(rational=True)
+    if not isinstance(inner, (sp.asin, sp.acos, sp.atan)):
+        return None
+    if not times.is_Integer or not 2 <= abs(times) <= ANGLE_LIMIT:
+        return None
+    u = sp.Dummy()
+    return sp.expand_trig(e.func(times * u)).xreplace(
+        {sp.sin(u): sp.sin(inner), sp.cos(u): sp.cos(inner)}
+    )
+
+
 def _parts(e: Expr) -> tuple[Expr, ...]:
     """The expressions that must be compiled before ``e``."""
     if isinstance(e, (Rational, Symbol)) or e is sp.pi:
@@ -172,12 +205,18 @@ def _parts(e: Expr) -> tuple[Expr, ...]:
         return tuple(e.args)
     if isinstance(e, Pow) and isinstance(e.exp, Rational):
         return (e.base,)
+    opened = _opened(e)
+    if opened is not None:
+        return (opened,)
     if isinstance(e, (sp.exp, sp.sin, sp.cos)):
         return (e.args[0], *(m for _, m in combination(e.args[0])))
     if isinstance(e, sp.log):
         return (e.args[0], *(f for _, f in factors(e.args[0])))
     if type(e) in _SIMPLE:
         return tuple(e.args)
+    if isinstance(e, jacobi_dn):
+        u, m = e.args
+        return (1 - m * sp.sin(jacobi_am(u, m)) ** 2, u, m)
     other = rewritten(e)
     if other is not None:
         return (other,)
@@ -195,6 +234,8 @@ def _call(e: Expr) -> tuple[str, tuple[int, ...], tuple[Expr, ...]]:
         name, orders, arguments = _call(inner)
         counted = list(orders)
         for symbol, count in e.variable_count:
+            if symbol not in arguments:
+                raise TypeError("a derivative that was left over has no place in a graph")
             counted[arguments.index(symbol)] += int(count)
         return name, tuple(counted), arguments
     if not isinstance(e, sp.Function):

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
-from sympy import Expr, Pow, Symbol
+from sympy import Expr, Pow, Symbol, false, true
 from sympy.core.relational import Relational
 
 from hjsolve.algebra.balls import (
@@ -80,7 +80,8 @@ def degree(graph: Graph) -> float:
 
 def chance(graph: Graph, factor: float, count: int) -> float:
     """The probability that a fraction of ``factor`` times the degree vanishes by chance."""
-    return float(min(1.0, factor * (degree(graph) + 1) / PRIME) ** count)
+    one = min(1.0, factor * (degree(graph) + 1) / PRIME)
+    return float(max(one**count, 1e-300))
 
 
 def vanish(
@@ -144,9 +145,11 @@ def refute(
     contained 0 at ``enough`` points (or at all that were found), without a
     bound when no point of the domain was found.
     """
+    if any(c == false for c in conditions):
+        return Finding(Truth.UNDECIDED, "balls")
     try:
         graph = Graph([expression])
-        sides = Graph([c.rhs - c.lhs for c in conditions])
+        sides = Graph([c.rhs - c.lhs for c in conditions if c != true])
     except (TooLarge, TypeError):
         return Finding(Truth.UNDECIDED, "graph too large")
     stand = stand_ins(graph, functions)
@@ -213,4 +216,4 @@ def attempts(walk: BallWalk, value_of: Callable[[list[BallJet]], Any]) -> Iterat
 def middle(value: Any) -> tuple[float, float]:
     """(midpoint, radius) of a ball, the radius rounded up to cover the midpoint's rounding."""
     mid = float(value.mid())
-    return mid, float(value.rad()) * 1.000001 + abs(mid) * 2.3e-16
+    return mid, max(float(value.rad()) * 1.000001 + abs(mid) * 2.3e-16, 5e-324)

@@ -28,8 +28,7 @@ def isolate(k: Expr, value: Expr, x: Symbol) -> Isolated | None:
     half: Expr = sp.S.Zero
     valid: list[Expr] = []
     while k != x:
-        if shows_sign(k):
-            valid.append(value)
+        valid.extend(forgotten(k, value))
         step = _undo(k, value, x)
         if step is None:
             return None
@@ -47,11 +46,17 @@ def isolate(k: Expr, value: Expr, x: Symbol) -> Isolated | None:
     return Isolated(value, half, tuple(valid))
 
 
-def shows_sign(k: Expr) -> bool:
-    """Whether k cannot be negative, which undoing it forgets: an even root, |u|."""
+def forgotten(k: Expr, value: Expr) -> tuple[Expr, ...]:
+    """What is ≥ 0 when k = value and lost when k is undone: for an even root, |u|, asin u."""
     if isinstance(k, Pow) and isinstance(k.exp, Rational):
-        return k.exp.q % 2 == 0
-    return isinstance(k, sp.Abs)
+        return (value,) if k.exp.q % 2 == 0 else ()
+    if isinstance(k, (sp.Abs, sp.acosh)):
+        return (value,)
+    if isinstance(k, (sp.asin, sp.atan)):
+        return (sp.pi / 2 - value, sp.pi / 2 + value)
+    if isinstance(k, (sp.acos, sp.acot)):
+        return (value, sp.pi - value)
+    return ()
 
 
 def spread(above: Expr, below: Expr) -> Expr:
@@ -64,7 +69,8 @@ def spread(above: Expr, below: Expr) -> Expr:
 
 def inverse_power(value: Expr, exponent: Rational) -> Expr:
     """The real x with x**exponent = value; the one that is not negative when there are two."""
-    if exponent.p % 2 and exponent.q % 2 and exponent.p != 1 and not value.is_nonnegative:
+    odd = exponent.p % 2 and exponent.q % 2
+    if odd and abs(exponent.p) != 1 and not value.is_nonnegative:
         return sp.sign(value) * sp.Abs(value) ** (1 / exponent)
     return value ** (1 / exponent)
 
@@ -83,7 +89,9 @@ def _undo(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:
     inverse = INVERSES.get(type(k)) or TWO_VALUED.get(type(k))
     if inverse is None:
         return None
-    return k.args[0], inverse(value), type(k) in TWO_VALUED and not k.args[0].is_nonnegative
+    even = type(k) in TWO_VALUED
+    one = isinstance(k, (sp.Abs, sp.cosh)) and k.args[0].is_nonnegative
+    return k.args[0], inverse(value), even and not one
 
 
 INVERSES = {

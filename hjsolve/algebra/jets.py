@@ -67,7 +67,7 @@ class JetWalk(Walk):
             jet.gradient = np.ones((size, 1), dtype=np.int64)
             jet.hessian = np.zeros((size, 1, 1), dtype=np.int64)
             return jet
-        inner = [children[0]] if op in ("exp", "log", "sin", "cos") else children
+        inner = [children[0]] if op in ("exp", "log", "sin", "cos", "delta") else children
         if not any(c.support for c in inner):
             return _constant(value)
         if op in ("call", "atan2"):
@@ -118,6 +118,9 @@ class JetWalk(Walk):
                 first = f * field.inverse(u) % p * below % p
                 second = first * first % p * ((f + 2) % p) % p * below % p
                 return first, (p - second) % p
+            case "delta":  # f² = u
+                first = field.inverse(2 * f % p)
+                return first, (p - first * field.inverse(2 * u % p) % p) % p
             case "abs":
                 return self.sign(u), np.zeros_like(u)
             case _:  # sign

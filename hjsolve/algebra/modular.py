@@ -174,7 +174,7 @@ def square_roots(graph: Graph) -> int:
         {
             n.args[0]
             for n in graph.nodes
-            if n.op == "asin" or (n.op == "power" and n.payload[1] % 2 == 0)
+            if n.op in ("asin", "delta") or (n.op == "power" and n.payload[1] % 2 == 0)
         }
     )
 
@@ -185,6 +185,7 @@ class Walk:
     def __init__(self, graph: Graph) -> None:
         self.graph = graph
         self.field = Field(graph)
+        self.places: Array = np.arange(0)  # which of the points drawn are looked at
 
     def values(self) -> tuple[list[Array], int]:
         """The values of the graph's roots, each (K,), and K; raises NoPoints."""
@@ -205,6 +206,8 @@ class Walk:
             values = self._draw(max(2 * keep, keep * 2 ** (hard + 1)))
             good = self._good(values)
             if good.size >= keep // 2:
+                # the signs of roots go with the points: a root inside another must keep its own
+                self.places = good[:keep]
                 return {s: v[good[:keep]] for s, v in values.items()}
             self.field = Field(self.graph)
         raise NoPoints
@@ -221,6 +224,7 @@ class Walk:
     def _good(self, values: dict[Symbol, Array]) -> Array:
         """Positions at which nothing divides by 0 and every radicand is a square."""
         size = _size(values)
+        self.places = np.arange(size)
         alive = np.ones(size, dtype=bool)
         level = (self.field.p - 1) // 2
         out: list[Array] = []
@@ -235,6 +239,8 @@ class Walk:
             elif node.op == "asin":
                 square = (1 - out[node.args[0]] ** 2) % self.field.p
                 alive &= self.field.power(square, level) == 1
+            elif node.op == "delta":
+                alive &= self.field.power(out[node.args[0]], level) == 1
             elif node.op in ("log", "abs", "atan2"):
                 alive &= out[node.args[0]] != 0
             elif node.op in ("sin", "cos"):
@@ -289,6 +295,10 @@ class Walk:
                     if below
                     else field.hashed(key_of(payload), np.zeros(size, dtype=np.int64))
                 )
+            case "delta":
+                root = field.power(below[0], (p + 1) // 4)
+                bit = field.hashed(key_of(("delta",)), below[1], below[2]) & 1
+                return np.where(bit == 1, root, p - root)
             case "log":
                 total = np.zeros(size, dtype=np.int64)
                 for exponent, factor in zip(payload, below[1:], strict=True):  # type: ignore[call-overload]
@@ -301,7 +311,7 @@ class Walk:
     def sign(self, a: Array) -> Array:
         """±1 by a hash of ±a, so that |a| = |−a|."""
         small = np.minimum(a, self.field.p - a)
-        bit = self.field.hashed(key_of(("sign",)), small) & 1
+        bit = self.field.hashed(key_of(("sign",)), small, self.places) & 1
         flip = (a > small).astype(np.int64)
         return np.where((bit ^ flip) == 1, 1, self.field.p - 1).astype(np.int64)
 
@@ -317,7 +327,8 @@ class Walk:
         for _ in range(twos):
             value = field.power(value, (p + 1) // 4)
         if twos:
-            bit = field.hashed(key_of(("root", denominator)), base) & 1
+            # a constant's root too is to take both signs over the points
+            bit = field.hashed(key_of(("root", denominator)), base, self.places) & 1
             value = np.where(bit == 1, value, p - value)
         return field.power(value, numerator % (p - 1))
 

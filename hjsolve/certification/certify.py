@@ -7,7 +7,9 @@ raises, so that it never ships as an answer; "undecided" ships, labelled.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import time
+from collections.abc import Callable, Sequence
+from functools import partial
 from itertools import product
 
 import sympy as sp
@@ -15,9 +17,11 @@ from sympy import Dummy, Expr, Integral, Symbol
 from sympy.core.relational import Relational
 
 from hjsolve.algebra.brackets import brackets, independent
+from hjsolve.algebra.budget import limit
 from hjsolve.algebra.identity import Finding, vanish
+from hjsolve.algebra.regimes import regime
 from hjsolve.algebra.sampling import Range
-from hjsolve.errors import Fault
+from hjsolve.errors import Fault, OutOfTime
 from hjsolve.records import (
     Antiderivative,
     Certificate,
@@ -35,6 +39,11 @@ ZERO_METHODS = {
     "modular": "identity modulo a random prime; bound: probability of a false zero",
     "balls": "ball arithmetic at points of the domain; bound: size of the balls",
 }
+CLAIM_SECONDS, ALL_SECONDS = 4.0, 18.0
+"""How long one claim may take, and all of them; what is not done by then is undecided."""
+
+Claim = tuple[str, Callable[[], list[Check]]]
+
 BRANCH_LIMIT = 3
 """With more coordinates of two branches, the branches are checked at random signs."""
 
@@ -53,16 +62,27 @@ def certify(
         for q, d in zip(h.coordinates, h.domains, strict=True)
         if d.lower.is_finite
     }
-    checks = [_verdict(separation), *_first_integrals(separation, ranges)]
+    claims: list[Claim] = [("the verdict", lambda: [_verdict(separation)])]
+    claims.append(("the first integrals", lambda: _first_integrals(separation, ranges)))
     if len(separation.equations) == len(h.coordinates):
-        checks += [_equation(separation, ranges), _independence(separation, ranges)]
-    if integral is not None:
-        checks += [c for t in integral.terms for c in _quadratures(t.drift, t.root, h, ranges)]
+        claims.append(("the Hamilton–Jacobi equation", lambda: [_equation(separation, ranges)]))
+        claims.append(("independence", lambda: [_independence(separation, ranges)]))
+    for term in integral.terms if integral is not None else ():
+        what = f"the closed forms of W_{term.equation.coordinate.name}"
+        claims.append((what, partial(_quadratures, term.drift, term.root, h, ranges)))
     if motion is not None:
-        checks += _motion(separation, motion, ranges)
-    for check in checks:
-        if check.verdict is Truth.REFUTED:
-            raise Fault(f"refuted by its own certificate: {check.claim}")
+        claims += _motion(separation, motion, ranges)
+    checks: list[Check] = []
+    stop = time.monotonic() + ALL_SECONDS
+    for what, check in claims:
+        try:
+            with limit(max(min(CLAIM_SECONDS, stop - time.monotonic()), 0.05)):
+                checks += check()
+        except OutOfTime:
+            checks.append(Check(f"{what}: stopped at its time limit", Truth.UNDECIDED, "none"))
+    for done in checks:
+        if done.verdict is Truth.REFUTED:
+            raise Fault(f"refuted by its own certificate: {done.claim}")
     return Certificate(tuple(checks))
 
 
@@ -106,7 +126,7 @@ def _first_integrals(separation: Separation, ranges: dict[Symbol, Range]) -> lis
         return []
     integrals = [c.first_integral for c in known]
     names = ", ".join(c.symbol.name for c in known)
-    commuting, conserved = brackets(h, integrals, ranges)
+    commuting, conserved = brackets(h, integrals, ranges, separation.extended)
     checks = [_check(f"the first integrals {names} are constant along the motion", conserved)]
     if commuting:
         checks.append(
@@ -192,8 +212,8 @@ def _differentiated(
     form: Formula, anti: Antiderivative, h: Hamiltonian, ranges: dict[Symbol, Range]
 ) -> list[Finding]:
     """d(form)/dq − integrand inside the regime of the form, for each sign of a |letter|."""
-    put, conditions = regime(form.valid)
     q = anti.variable
+    put, conditions = regime((*form.valid, *_inside(h, q)), keep=q)
     whole = sp.Tuple(form.expression, anti.integrand).xreplace(put)
     shown = {s: Dummy(s.name, positive=True) * sign for s, sign in _signs_shown(whole, q)}
     whole = whole.xreplace(shown)
@@ -211,9 +231,20 @@ def _differentiated(
         antiderivative = antiderivative.replace(sp.acosh, _acosh).replace(sp.log, _log)
         residue = sp.diff(antiderivative, q) - integrand
         within = [c.xreplace(case) for c in conditions]
+        sided = _side([c for c in within if c != sp.true], q)
+        residue, within = residue.xreplace(sided), [c.xreplace(sided) for c in within]
         within = [c for c in within if c != sp.true]
         findings += vanish([residue], ranges, h.functions, 60, within, positive)
     return findings
+
+
+def _side(conditions: Sequence[Relational], q: Symbol) -> dict[Symbol, Expr]:
+    """The coordinate as a letter with the sign that the conditions give it."""
+    for c in conditions:
+        factor, letter = (c.rhs - c.lhs).as_coeff_Mul()
+        if letter == q and q.is_positive is None:
+            return {q: (1 if factor > 0 else -1) * Dummy(q.name, positive=True)}
+    return {}
 
 
 def _acosh(u: Expr) -> Expr:
@@ -224,6 +255,14 @@ def _acosh(u: Expr) -> Expr:
 def _log(u: Expr) -> Expr:
     """Log u for log |u|: the derivative is the same, and SymPy knows it for complex u too."""
     return sp.log(u.args[0] if isinstance(u, sp.Abs) else u)
+
+
+def _inside(h: Hamiltonian, q: Symbol) -> tuple[Relational, ...]:
+    """The ends of an interval with letters in them, as conditions on q."""
+    domain = dict(zip(h.coordinates, h.domains, strict=True))[q]
+    if domain.kind != "interval" or (domain.lower.is_number and domain.upper.is_number):
+        return ()
+    return (sp.Lt(domain.lower, q, evaluate=False), sp.Lt(q, domain.upper, evaluate=False))
 
 
 def _signs_shown(expression: Expr, q: Symbol) -> list[tuple[Symbol, int]]:
@@ -237,56 +276,66 @@ def _signs_shown(expression: Expr, q: Symbol) -> list[tuple[Symbol, int]]:
     return list(found.items())
 
 
-def regime(valid: Sequence[Relational]) -> tuple[dict[Symbol, Expr], list[Relational]]:
-    """What a regime says of single symbols, and the conditions that are left.
-
-    A symbol with a sign becomes a letter with that sign, a boundary (a ≤ b and
-    b ≤ a with a symbol on one side) the value it has there.
-    """
-    put: dict[Symbol, Expr] = {}
-    pairs = list(dict.fromkeys((v.lhs, v.rhs) for v in valid))
-    for low, high in pairs:
-        if (high, low) in pairs:
-            letter, value = (low, high) if low.is_Symbol and not low.is_positive else (high, low)
-            if letter.is_Symbol and not value.has(letter):
-                put[letter] = value
-        elif low == 0 and high.is_Symbol and not high.is_positive:
-            put.setdefault(high, Dummy(high.name, positive=True))
-        elif high == 0 and low.is_Symbol and not low.is_negative:
-            put.setdefault(low, -Dummy(low.name, positive=True))
-    left = [v.xreplace(put) for v in valid]
-    return put, [v for v in left if v not in (sp.true, sp.false)]
-
-
 # ------------------------------------------------------------------- motion
 
 
-def _motion(separation: Separation, motion: Motion, ranges: dict[Symbol, Range]) -> list[Check]:
+def _motion(separation: Separation, motion: Motion, ranges: dict[Symbol, Range]) -> list[Claim]:
     """q̇ = ∂H/∂p and ṗ = −∂H/∂q for the coordinates that are explicit."""
     h = separation.hamiltonian
-    known = {q: f.expression for q, f in motion.coordinates if f is not None}
-    known |= {p: f.expression for p, f in motion.momenta if f is not None}
-    formulas = [f for _, f in (*motion.coordinates, *motion.momenta) if f is not None]
-    valid = tuple(dict.fromkeys(v for f in formulas for v in f.valid))
-    checks = []
-    for q, p in zip(h.coordinates, h.momenta, strict=True):
-        if q not in known or p not in known:
-            continue
-        rate, force = sp.diff(h.expression, p), -sp.diff(h.expression, q)
-        needed = (rate.free_symbols | force.free_symbols) & {*h.coordinates, *h.momenta}
-        claim = f"{q.name}({h.time.name}), {p.name}({h.time.name}) satisfy Hamilton's equations"
-        if not needed <= set(known):
-            checks.append(Check(claim, Truth.UNDECIDED, "it rests on a coordinate left implicit"))
-            continue
-        residues = []
-        branches = _branches(separation.equations)
-        for branch in branches[:1] + branches[-1:]:
-            put = {s: e.xreplace(branch) for s, e in known.items()}
-            residues.append(sp.diff(put[q], h.time) - rate.xreplace(put))
-            residues.append(sp.diff(put[p], h.time) - force.xreplace(put))
-        signs, conditions = regime(tuple(v.xreplace(known) for v in valid))
-        residues = [r.xreplace(signs) for r in residues]
+    momentum = dict(zip(h.coordinates, h.momenta, strict=True))
+    known = {s: f for s, f in (*motion.coordinates, *motion.momenta) if f is not None}
+    cases = [(q, known, "") for q in h.coordinates if q in known and momentum[q] in known]
+    for n, other in enumerate(motion.others, 1):
+        q = other.coordinate
+        changed = known | {q: other.motion, momentum[q]: other.momentum}
+        cases.append((q, changed, f" in regime {n} of the further ones"))
+    return [
+        (
+            f"Hamilton's equations of {q.name}{where}",
+            partial(_hamilton_check, separation, q, momentum[q], f, where, ranges),
+        )
+        for q, f, where in cases
+    ]
+
+
+def _hamilton_check(
+    separation: Separation,
+    q: Symbol,
+    p: Symbol,
+    formulas: dict[Symbol, Formula],
+    where: str,
+    ranges: dict[Symbol, Range],
+) -> list[Check]:
+    return [_hamilton(separation, q, p, formulas, where, ranges)]
+
+
+def _hamilton(
+    separation: Separation,
+    q: Symbol,
+    p: Symbol,
+    formulas: dict[Symbol, Formula],
+    where: str,
+    ranges: dict[Symbol, Range],
+) -> Check:
+    """Hamilton's equations for one pair, along ``formulas``, on the first and last branch."""
+    h = separation.hamiltonian
+    known = {s: f.expression for s, f in formulas.items()}
+    claim = f"{q.name}({h.time.name}), {p.name}({h.time.name}) satisfy Hamilton's equations{where}"
+    rate, force = sp.diff(h.expression, p), -sp.diff(h.expression, q)
+    needed = (rate.free_symbols | force.free_symbols) & {*h.coordinates, *h.momenta} | {q, p}
+    if not needed <= set(known):
+        return Check(claim, Truth.UNDECIDED, "it rests on a coordinate left implicit")
+    valid = tuple(dict.fromkeys(v for s in needed for v in formulas[s].valid))
+    findings: list[Finding] = []
+    branches = _branches(separation.equations)
+    for branch in branches[:1] + branches[-1:]:
+        put = {s: e.xreplace(branch) for s, e in known.items()}
+        inside = _inside(h, q)
+        signs, conditions = regime(tuple(v.xreplace(put) for v in (*valid, *inside)))
+        residues = [
+            (sp.diff(put[q], h.time) - rate.xreplace(put)).xreplace(signs),
+            (sp.diff(put[p], h.time) - force.xreplace(put)).xreplace(signs),
+        ]
         positive = [c.rhs for c in conditions if c.lhs == 0]
-        found = vanish(residues, ranges, h.functions, 60, conditions, positive)
-        checks.append(_check(claim, found))
-    return checks
+        findings += vanish(residues, ranges, h.functions, 60, conditions, positive)
+    return _check(claim, findings)

@@ -7,7 +7,7 @@ signs would enter, and such a potential does not separate here.
 
 from __future__ import annotations
 
-from sympy import Expr, Mul, S, Symbol, expand, oo, sqrt, symbols
+from sympy import Expr, Mul, S, Symbol, oo, sqrt, symbols
 
 from hjsolve.charts.plane import r
 from hjsolve.charts.system import HALF_LINE, CoordinateSystem, f, g, h, x, y, z
@@ -44,9 +44,9 @@ def square(roots: tuple[Symbol, ...], shape: tuple[Symbol, ...], v: Symbol, time
     return Mul(*(v - w for w in others(roots, v))) / (times * Mul(*(v - a for a in shape)))
 
 
-def rows(roots: tuple[Symbol, ...], shape: tuple[Symbol, ...], times: int) -> tuple[
-    tuple[Expr, ...], ...
-]:
+def rows(
+    roots: tuple[Symbol, ...], shape: tuple[Symbol, ...], times: int
+) -> tuple[tuple[Expr, ...], ...]:
     """The Stäckel matrix u_i^(n−1−j)/(times · Π_a (u_i − a))."""
     n = len(roots)
     return tuple(
@@ -57,15 +57,13 @@ def rows(roots: tuple[Symbol, ...], shape: tuple[Symbol, ...], times: int) -> tu
 
 def root(symbol: Symbol, polynomial: Expr, index: int) -> Definition:
     """The index-th real root, from 1, in ascending order."""
-    return Definition(symbol, root_of=expand(polynomial), unknown=u, index=index)
+    return Definition(symbol, root_of=polynomial, unknown=u, index=index)
 
 
 _SHAPE = (a1, a2, a3)
 _ROOTS = (u1, u2, u3)
-_full = Mul(*(u - a for a in _SHAPE))
-_pencil = _full - sum(
-    s**2 * Mul(*(u - b for b in others(_SHAPE, a)))
-    for s, a in zip((x, y, z), _SHAPE, strict=True)
+_pencil = Mul(*(a - u for a in _SHAPE)) - sum(
+    s**2 * Mul(*(b - u for b in others(_SHAPE, a))) for s, a in zip((x, y, z), _SHAPE, strict=True)
 )
 
 ELLIPSOIDAL = CoordinateSystem(
@@ -73,24 +71,44 @@ ELLIPSOIDAL = CoordinateSystem(
     source=SOURCE,
     examples=("b*(x**2 + y**2 + z**2) + d/x**2 + k/y**2 + l/z**2",),
     coordinates=_ROOTS,
-    domains=(interval(a1, a2), interval(a2, a3), interval(a3, oo)),
-    place=tuple(sqrt(through(_ROOTS, _SHAPE, a)) for a in _SHAPE),
+    domains=(interval(-oo, a1), interval(a1, a2), interval(a2, a3)),
+    place=tuple(sqrt(-through(_ROOTS, _SHAPE, a)) for a in _SHAPE),
     inverse=tuple(root(v, _pencil, k) for k, v in enumerate(_ROOTS, 1)),
-    squares=tuple(square(_ROOTS, _SHAPE, v, 4) for v in _ROOTS),
-    staeckel=rows(_ROOTS, _SHAPE, 4),
+    squares=tuple(square(_ROOTS, _SHAPE, v, -4) for v in _ROOTS),
+    staeckel=rows(_ROOTS, _SHAPE, -4),
     potential=sum(
-        (fn(v) / Mul(*(v - w for w in others(_ROOTS, v)))
-        for fn, v in zip((f, g, h), _ROOTS, strict=True)), S.Zero
+        (
+            fn(v) / Mul(*(v - w for w in others(_ROOTS, v)))
+            for fn, v in zip((f, g, h), _ROOTS, strict=True)
+        ),
+        S.Zero,
     ),
     geometry=("center", "axes", "a"),
     shape=_SHAPE,
-    positive=(u2 - u1, u3 - u1, u3 - u2, u1 - a1, a2 - u1, u2 - a2, a3 - u2, u3 - a3,
-              u2 - a1, u3 - a1, u3 - a2, a3 - u1, a2 - a1, a3 - a1, a3 - a2),
+    positive=(
+        u2 - u1,
+        u3 - u1,
+        u3 - u2,
+        a1 - u1,
+        a2 - u1,
+        a3 - u1,
+        u2 - a1,
+        a2 - u2,
+        a3 - u2,
+        u3 - a1,
+        u3 - a2,
+        a3 - u3,
+        a2 - a1,
+        a3 - a1,
+        a3 - a2,
+    ),
 )
 
 _CONE = (v1, v2)
-_cone_rows = tuple((S.Zero, *(sign * e for sign, e in zip((-1, 1), row, strict=True)))
-                   for row in rows(_CONE, _SHAPE, 4))
+_cone_rows = tuple(
+    (S.Zero, *(sign * e for sign, e in zip((-1, 1), row, strict=True)))
+    for row in rows(_CONE, _SHAPE, 4)
+)
 CONICAL = CoordinateSystem(
     family="conical",
     source=SOURCE,
@@ -103,8 +121,10 @@ CONICAL = CoordinateSystem(
         *(
             root(
                 v,
-                sum(s**2 * Mul(*(u - b for b in others(_SHAPE, a)))
-                    for s, a in zip((x, y, z), _SHAPE, strict=True)),
+                sum(
+                    s**2 * Mul(*(u - b for b in others(_SHAPE, a)))
+                    for s, a in zip((x, y, z), _SHAPE, strict=True)
+                ),
                 k,
             )
             for k, v in enumerate(_CONE, 1)
@@ -115,14 +135,23 @@ CONICAL = CoordinateSystem(
     potential=f(r) + (g(v1) + h(v2)) / (r**2 * (v1 - v2)),
     geometry=("center", "axes", "a"),
     shape=_SHAPE,
-    positive=(r, v2 - v1, v1 - a1, a2 - v1, v2 - a2, a3 - v2, v2 - a1, a3 - v1,
-              a2 - a1, a3 - a1, a3 - a2),
+    positive=(
+        r,
+        v2 - v1,
+        v1 - a1,
+        a2 - v1,
+        v2 - a2,
+        a3 - v2,
+        v2 - a1,
+        a3 - v1,
+        a2 - a1,
+        a3 - a1,
+        a3 - a2,
+    ),
 )
 
 _FLAT = (a1, a2)
-_sheets = (
-    (u - a1) * (u - a2) * (u - 2 * z) - x**2 * (u - a2) - y**2 * (u - a1)
-)
+_sheets = (u - a1) * (u - a2) * (u - 2 * z) - x**2 * (u - a2) - y**2 * (u - a1)
 PARABOLOIDAL = CoordinateSystem(
     family="paraboloidal",
     source=SOURCE,
@@ -140,6 +169,16 @@ PARABOLOIDAL = CoordinateSystem(
     potential=ELLIPSOIDAL.potential,
     geometry=("center", "axes", "bc"),
     shape=_FLAT,
-    positive=(u2 - u1, u3 - u1, u3 - u2, a1 - u1, u2 - a1, a2 - u2, u3 - a2, a2 - u1,
-              u3 - a1, a2 - a1),
+    positive=(
+        u2 - u1,
+        u3 - u1,
+        u3 - u2,
+        a1 - u1,
+        u2 - a1,
+        a2 - u2,
+        u3 - a2,
+        a2 - u1,
+        u3 - a1,
+        a2 - a1,
+    ),
 )

@@ -97,7 +97,7 @@ PROLATE = CoordinateSystem(
     potential=(f(mu) + g(nu)) / _prolate + h(phi) / (sinh(mu) * sin(nu)) ** 2,
     geometry=("foci",),
     shape=(c,),
-    positive=(cosh(mu) - cos(nu), cosh(mu) + cos(nu), _prolate, sinh(mu), sin(nu), c),
+    positive=(cosh(mu) - cos(nu), cosh(mu) + cos(nu), sinh(mu), sin(nu), c),
 )
 
 _oblate = sinh(mu) ** 2 + cos(nu) ** 2

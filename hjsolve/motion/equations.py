@@ -8,12 +8,13 @@ differentiating a finished antiderivative does the opposite.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import sympy as sp
-from sympy import Add, Eq, Expr, Integral, Symbol
+from sympy import Add, Eq, Expr, Symbol
 from sympy.core.relational import Relational
 
+from hjsolve.algebra.calculus import derivative
 from hjsolve.motion.explicit import explicit
 from hjsolve.records import (
     Antiderivative,
@@ -52,16 +53,16 @@ def set_in_motion(
     if any(e.where for e in separation.equations):
         return None
     domain = dict(zip(h.coordinates, h.domains, strict=True))
-    betas = tuple(_beta(c.symbol) for c in separation.constants)
+    betas = tuple(_beta(c.symbol, h.names) for c in separation.constants)
     table: dict[tuple[Symbol, Symbol], Quadrature] = {}
     for e in separation.equations:
         for c in separation.constants:
             q = e.coordinate
             table[q, c.symbol] = Quadrature(
-                integrate(sp.diff(e.drift, c.symbol), q, domain[q]),
+                integrate(derivative(e.drift, c.symbol), q, domain[q]),
                 integrate(slope(e, c.symbol), q, domain[q]),
             )
-    in_time = {c.symbol: _time_part(separation, integral, c.symbol) for c in separation.constants}
+    in_time = {c.symbol: _time_part(separation, c.symbol, integrate) for c in separation.constants}
     relations = tuple(
         _relation(separation, c.symbol, beta, table, in_time[c.symbol])
         for c, beta in zip(separation.constants, betas, strict=True)
@@ -73,7 +74,7 @@ def set_in_motion(
     found = explicit(separation, phases, integrate)
     coordinates = tuple((q, found.coordinates.get(q)) for q in h.coordinates)
     momenta = tuple((p, found.momenta.get(p)) for p in h.momenta)
-    return Motion(relations, coordinates, momenta)
+    return Motion(relations, coordinates, momenta, tuple(found.others))
 
 
 def slope(e: SeparatedEquation, alpha: Symbol) -> Expr:
@@ -81,23 +82,30 @@ def slope(e: SeparatedEquation, alpha: Symbol) -> Expr:
     if e.root == 0:
         return sp.S.Zero
     if isinstance(e.root, sp.Pow) and e.root.exp == sp.Rational(1, 2):
-        above = sp.diff(e.root.base, alpha)
+        above = derivative(e.root.base, alpha)
         return above / (2 * e.root)
-    return sp.diff(e.root, alpha)
+    return derivative(e.root, alpha)
 
 
-def _beta(alpha: Symbol) -> Symbol:
-    return Symbol(alpha.name.replace("alpha", "beta", 1), real=True)
+def _beta(alpha: Symbol, taken: frozenset[str]) -> Symbol:
+    name = alpha.name.replace("alpha", "beta", 1)
+    while name in taken:
+        name += "_"
+    return Symbol(name, real=True)
 
 
-def _time_part(separation: Separation, integral: CompleteIntegral, alpha: Symbol) -> Expr:
-    if integral.time_term is None or separation.time_momentum is None:
+def _time_part(separation: Separation, alpha: Symbol, integrate: Integrate) -> Expr:
+    """∂T/∂α, under the integral sign."""
+    if separation.time_momentum is None:
         return sp.S.Zero
-    if integral.time_term.has(Integral):
-        t = separation.hamiltonian.time
-        inner = sp.diff(separation.time_momentum, alpha)
-        return inner * t if not inner.has(t) else Integral(inner, (t, Symbol("t_0"), t))
-    return sp.diff(integral.time_term, alpha)
+    t = separation.hamiltonian.time
+    inner = derivative(separation.time_momentum, alpha)
+    if not inner.has(t):
+        return inner * t
+    whole = integrate(inner, t, Domain())
+    everywhere = tuple(f for f in whole.closed_forms if not f.valid)
+    formula = replace(whole, closed_forms=everywhere).formula(separation.hamiltonian.names)
+    return formula.expression
 
 
 def _relation(
@@ -117,7 +125,7 @@ def _relation(
         for factor, anti in ((sp.S.One, quadrature.drift), (e.sign, quadrature.root)):
             if anti.integrand == 0:
                 continue
-            form = anti.formula
+            form = anti.formula(separation.hamiltonian.names)
             parts.append(factor * form.expression)
             where += [d for d in form.where if d not in where]
             valid += [v for v in form.valid if v not in valid]

@@ -20,21 +20,25 @@ import sympy as sp
 from sympy import Add, Dummy, Expr, Mul, Symbol
 from sympy.core.relational import Relational
 
+from hjsolve.algebra.calculus import derivative, is_formula
 from hjsolve.algebra.generators import NotRational
-from hjsolve.algebra.identity import vanish
+from hjsolve.algebra.identity import refute, vanish
 from hjsolve.algebra.linear import constant_relations
+from hjsolve.algebra.regimes import boundary_values
 from hjsolve.algebra.roots import unify_roots
-from hjsolve.motion.inversions import invert
+from hjsolve.motion.inversions import invert, returns
 from hjsolve.records import (
     Antiderivative,
     Domain,
     Formula,
+    OtherRegime,
     SeparatedEquation,
     Separation,
     Truth,
 )
 
 Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
+Valid = tuple[Relational, ...]
 
 
 @dataclass(slots=True)
@@ -43,6 +47,7 @@ class Found:
 
     coordinates: dict[Symbol, Formula] = field(default_factory=dict)
     momenta: dict[Symbol, Formula] = field(default_factory=dict)
+    others: list[OtherRegime] = field(default_factory=list)
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,10 +87,16 @@ class _Explicit:
             weights = self._weights(e)
             if weights is None:
                 continue
-            p = self._parametrise(e, weights)
-            if p is not None:
+            found = self._parametrise(e, weights)
+            general = [p for p in found if not boundary_values(p.valid)]
+            for p in general[:1]:
                 parametrised.append(p)
-                self._record(p)
+                motion, momentum = self._formulas(p)
+                self.found.coordinates[e.coordinate] = motion
+                self.found.momenta[e.momentum] = momentum
+            self.found.others += [
+                OtherRegime(e.coordinate, *self._formulas(p)) for p in found if p not in general[:1]
+            ]
         for e in self.s.equations:
             if e.coordinate not in self.found.coordinates and e.root == 0:
                 self._follow(e, parametrised)
@@ -122,8 +133,8 @@ class _Explicit:
 
     # -------------------------------------------------------------- invert
 
-    def _parametrise(self, e: SeparatedEquation, weights: list[Expr]) -> Parametrised | None:
-        """q(τ) from Σ_k c_k times the relations."""
+    def _parametrise(self, e: SeparatedEquation, weights: list[Expr]) -> list[Parametrised]:
+        """q(τ) from Σ_k c_k times the relations, in every regime that inverts."""
         q = e.coordinate
         phase = Add(*(c * self.phases[a] for c, a in zip(weights, self.alphas, strict=True)))
         drift = Add(*(c * sp.diff(e.drift, a) for c, a in zip(weights, self.alphas, strict=True)))
@@ -132,30 +143,69 @@ class _Explicit:
             speed, integrand = sp.S.One, sp.simplify(drift)
         else:
             if drift != 0:
-                return None
+                return []
             squares = (sp.diff(_square(e.root), a) for a in self.alphas)
             speed = sp.simplify(Add(*(c * x for c, x in zip(weights, squares, strict=True))) / 2)
             integrand = speed / e.root
         anti = self.integrate(integrand, q, self.domain[q])
-        for form in anti.closed_forms:
+        found = []
+        for form in (f for f in anti.closed_forms if not f.where):
             valid = tuple(dict.fromkeys((*form.valid, *e.valid)))
-            path = invert(form.expression, q, tau, self.domain[q], valid)
-            if path is not None and not form.where:
-                return Parametrised(e, tau, path, speed, phase, form.expression, valid)
-        return None
+            shape = form.expression
 
-    def _record(self, p: Parametrised) -> None:
+            def admissible(path: Expr, shape: Expr = shape, valid: Valid = valid) -> bool:
+                return self._runs(e, tau, path, speed, shape, valid)
+
+            for path, side in invert(shape, q, tau, self.domain[q], valid, admissible):
+                needed = (*valid, *side, *self._half_time(e, shape, tau, path, valid))
+                found.append(Parametrised(e, tau, path, speed, phase, shape, needed))
+        return found
+
+    def _runs(
+        self, e: SeparatedEquation, tau: Symbol, path: Expr, speed: Expr, shape: Expr, valid: Valid
+    ) -> bool:
+        """Whether the momentum along a path is real and that of the separated equation."""
+        q = e.coordinate
+        slope = derivative(path, tau)
+        if not (is_formula(path) and is_formula(slope)):
+            return False
+        conditions = [v.xreplace({q: path}) for v in valid if v.rel_op in ("<", ">")]
+        momentum = e.drift if e.root == 0 else (speed * slope) ** 2 - e.root**2
+        residue = momentum.xreplace(boundary_values(valid)).xreplace({q: path})
+        if e.root == 0:  # only whether it has a real value
+            residue = Add(residue, -residue, evaluate=False)
+        found = refute(residue, {tau: (-sp.S.One, sp.S.One)}, self.h.functions, 60, conditions)
+        if found.truth is Truth.REFUTED:
+            return False
+        return found.bound is not None or not shape.has(sp.Abs)
+
+    def _half_time(
+        self, e: SeparatedEquation, shape: Expr, tau: Symbol, path: Expr, valid: Valid
+    ) -> Valid:
+        """The sign of τ that a path needs where its momentum, having one branch, cannot turn."""
+        if e.root != 0:
+            return ()
+        after, before = returns(shape, e.coordinate, tau, path, self.domain[e.coordinate], valid)
+        if after and not before:
+            return (sp.Le(0, tau, evaluate=False),)
+        if before and not after:
+            return (sp.Le(tau, 0, evaluate=False),)
+        return ()
+
+    def _formulas(self, p: Parametrised) -> tuple[Formula, Formula]:
+        """(q(t), p(t)) from q(τ)."""
         e = p.equation
         sign = e.sign if e.root != 0 and not _turns(p.path, p.tau) else sp.S.One
         run = {p.tau: _oriented(sign, p.phase)}
-        self.found.coordinates[e.coordinate] = Formula(p.path.xreplace(run), (), p.valid)
+        valid = tuple(v.xreplace(run) for v in p.valid)
+        motion = Formula(p.path.xreplace(run), (), valid)
         if e.root == 0:
             momentum = e.drift.xreplace({e.coordinate: p.path}).xreplace(run)
         else:
-            along = p.speed.xreplace({e.coordinate: p.path}) * sp.diff(p.path, p.tau)
+            along = p.speed.xreplace({e.coordinate: p.path}) * derivative(p.path, p.tau)
             drift = e.drift.xreplace({e.coordinate: p.path})
             momentum = (drift + sign * along).xreplace(run)
-        self.found.momenta[e.momentum] = Formula(momentum, (), p.valid)
+        return motion, Formula(momentum, (), valid)
 
     # ------------------------------------------------- ignorable, following
 
@@ -173,19 +223,33 @@ class _Explicit:
         for other in self.s.equations:
             if other is e:
                 continue
-            drift, root = sp.diff(other.drift, alpha), sp.diff(_square(other.root), alpha) / 2
+            drift = derivative(other.drift, alpha)
+            root = derivative(_square(other.root), alpha) / 2
             if drift == 0 and root == 0:
                 continue
             leader = next((p for p in leaders if p.equation is other), None)
-            if leader is None or drift != 0:
+            if leader is None:
                 return
-            part = self._along(leader, root)
-            if part is None:
+            parts = [
+                self._at(leader, drift) if drift != 0 else sp.S.Zero,
+                self._along(leader, root) if root != 0 else sp.S.Zero,
+            ]
+            if None in parts:
                 return
-            total -= part
-            valid += [v for v in leader.valid if v not in valid]
+            total -= Add(*parts)
+            needed = self.found.coordinates[leader.equation.coordinate].valid
+            valid += [v for v in needed if v not in valid]
         self.found.coordinates[e.coordinate] = Formula(total, (), tuple(valid))
         self.found.momenta[e.momentum] = Formula(e.drift, (), tuple(valid))
+
+    def _at(self, leader: Parametrised, rate: Expr) -> Expr | None:
+        """∫ rate dq at q(t): what has one branch needs no care at turning points."""
+        q = leader.equation.coordinate
+        forms = self.integrate(rate, q, self.domain[q]).closed_forms
+        form = next((f for f in forms if set(f.valid) <= set(leader.valid)), None)
+        if form is None or form.where:
+            return None
+        return form.expression.xreplace({q: self.found.coordinates[q].expression})
 
     def _along(self, leader: Parametrised, above: Expr) -> Expr | None:
         """sign·∫ above/root dq as a function of time, through the turning points."""

@@ -11,9 +11,10 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import sympy as sp
-from sympy import Expr, Symbol
+from sympy import Add, Dummy, Expr, Symbol
 from sympy.core.relational import Relational
 
+from hjsolve.algebra.functions import jacobi_am, jacobi_cn, jacobi_dn, jacobi_sn
 from hjsolve.algebra.identity import refute
 from hjsolve.algebra.isolate import isolate
 from hjsolve.records import Domain, Truth
@@ -43,11 +44,10 @@ def _single(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     if found is None:
         return ()
     candidates = _about(found.centre, found.half)
-    return (
-        tuple(sp.expand(c.replace(sp.acos, _through_asin)) for c in candidates)
-        if (found.centre.has(sp.pi))
-        else candidates
-    )
+    if not found.centre.has(sp.pi):
+        return candidates
+    # the two values of the inverse sine, the one about 0 first
+    return tuple(sp.expand(c.replace(sp.acos, _through_asin)) for c in reversed(candidates))
 
 
 def _through_asin(v: Expr) -> Expr:
@@ -67,6 +67,62 @@ def _root_of_quadratic(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     return _about(-b / (2 * a), sp.sqrt(sp.expand(inside / (4 * a**2))))
 
 
+def _jacobi(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
+    """c·F(φ(q), m) + d = τ: φ = am((τ − d)/c, m)."""
+    integrals = [f for f in form.atoms(sp.elliptic_f) if f.has(q)]
+    if len(integrals) != 1:
+        return ()
+    (integral,) = integrals
+    phi, m = integral.args
+    whole = Dummy("F", real=True)
+    outer = isolate(form.xreplace({integral: whole}), tau, whole)
+    if outer is None or outer.half != 0 or form.xreplace({integral: whole}).has(q) or m.has(q):
+        return ()
+    amplitude = Dummy("A", real=True)
+    inverse = Dummy("w", real=True)
+    turned = phi.xreplace({1 / q: inverse})
+    below = turned.has(inverse) and not turned.has(q)
+    inner = isolate(turned, amplitude, inverse) if below else isolate(phi, amplitude, q)
+    if inner is None:
+        return ()
+    found: list[Expr] = []
+    for e in _about(inner.centre, inner.half):
+        if inner.centre.has(sp.pi):
+            # asin v before π − asin v
+            found.insert(0, sp.expand(e.replace(sp.acos, _through_asin)))
+        else:
+            found.append(1 / e if below else e)
+    return tuple(_in_jacobi(e, amplitude, outer.centre, m) for e in found)
+
+
+def _in_jacobi(path: Expr, amplitude: Symbol, u: Expr, m: Expr) -> Expr:
+    """A function of the amplitude in sn, cn, dn of (u, m)."""
+    s, c = jacobi_sn(u, m), jacobi_cn(u, m)
+    half = amplitude / 2
+    path = path.xreplace(
+        {
+            sp.tan(half): s / (1 + c),
+            sp.tan(amplitude): s / c,
+            sp.sin(amplitude): s,
+            sp.cos(amplitude): c,
+        }
+    )
+    path = path.xreplace({amplitude: jacobi_am(u, m)})
+    s = next(iter(s.atoms(jacobi_sn)), s)  # without the sign of u
+    put = {}
+    for power in path.atoms(sp.Pow):
+        if power.exp != sp.Rational(1, 2) or not power.base.has(s):
+            continue
+        square = Dummy()
+        base = sp.expand(power.base).xreplace({s**2: square})
+        if base.has(s) or sp.diff(base, square, 2) != 0:
+            continue
+        at, rate = base.subs(square, 0), sp.diff(base, square)
+        if sp.cancel(rate + m * at) == 0:
+            put[power] = sp.sqrt(sp.factor_terms(at)) * jacobi_dn(u, m)
+    return path.xreplace(put)
+
+
 def _about(centre: Expr, half: Expr) -> tuple[Expr, ...]:
     return (centre,) if half == 0 else (centre + half, centre - half)
 
@@ -84,6 +140,16 @@ INVERSIONS = (
         ),
     ),
     Inversion(
+        "amplitude",
+        "Jacobi's elliptic functions, DLMF 22.15, 22.16 (from memory)",
+        _jacobi,
+        (
+            ("elliptic_f(asin(q/a), k)/w", "a*jacobi_sn(tau*w, k)"),
+            ("elliptic_f(q/2, k)", "2*jacobi_am(tau, k)"),
+            ("-elliptic_f(acos(q), k)", "jacobi_cn(tau, k)"),
+        ),
+    ),
+    Inversion(
         "root-of-a-quadratic",
         "the quadratic formula",
         _root_of_quadratic,
@@ -93,32 +159,60 @@ INVERSIONS = (
 
 
 def invert(
-    form: Expr, q: Symbol, tau: Symbol, domain: Domain, valid: Sequence[Relational]
-) -> Expr | None:
-    """q(τ) from form(q) = τ, or None where no kind of inversion applies.
+    form: Expr,
+    q: Symbol,
+    tau: Symbol,
+    domain: Domain,
+    valid: Sequence[Relational],
+    admissible: Callable[[Expr], bool] = lambda _path: True,
+) -> list[tuple[Expr, tuple[Relational, ...]]]:
+    """Every q(τ) with form(q) = τ, with what it needs beyond ``valid``.
 
     A candidate is put back into the form; where that contradicts τ near τ = 0
-    inside the regime, it belongs to another branch.
+    inside the regime, it belongs to another branch.  Of two values about a
+    common centre each is right on its own side only, and says so.
+    ``admissible`` is the caller's own check of a candidate.
     """
     for inversion in INVERSIONS:
         candidates = inversion.invert(form, q, tau)
-        for candidate in candidates:
-            if len(candidates) == 1 or _returns(form, q, tau, candidate, domain, valid):
-                return candidate
-    return None
+        good = [
+            path
+            for path in candidates
+            if (len(candidates) == 1 or any(returns(form, q, tau, path, domain, valid)))
+            and admissible(path)
+        ]
+        if not good:
+            continue
+        if len(candidates) == 1:
+            return [(good[0], ())]
+        centre = sp.expand(Add(*candidates) / 2)
+        if centre.has(tau):
+            return [(path, ()) for path in good]
+        return [(path, _side(path - centre, centre, q, tau)) for path in good]
+    return []
 
 
-def _returns(
+def _side(half: Expr, centre: Expr, q: Symbol, tau: Symbol) -> tuple[Relational, ...]:
+    """The side of the centre on which q = centre + half runs, where it keeps to one."""
+    for sign, relation in ((1, sp.Lt(centre, q)), (-1, sp.Lt(q, centre))):
+        keeps = refute(sp.Abs(half) - sign * half, {tau: (-sp.Rational(1, 5), sp.Rational(1, 5))})
+        if keeps.truth is Truth.UNDECIDED and keeps.bound is not None:
+            return (relation,)
+    return ()
+
+
+def returns(
     form: Expr, q: Symbol, tau: Symbol, path: Expr, domain: Domain, valid: Sequence[Relational]
-) -> bool:
-    """Whether form(path) = τ at points of the regime near τ = 0, in balls."""
-    conditions = [v.xreplace({q: path}) for v in valid]
+) -> tuple[bool, bool]:
+    """Whether form(path) = τ in balls, for τ a little above 0 and a little below."""
+    # at a boundary, a ≤ b and b ≤ a, the symbol is gone from the form
+    conditions = [v.xreplace({q: path}) for v in valid if v.rel_op in ("<", ">")]
     if domain.lower.is_number and domain.lower.is_finite:
         conditions.append(sp.Lt(domain.lower, path, evaluate=False))
     residue = form.xreplace({q: path}) - tau
+    found = []
     for side in (sp.S.One, sp.S.NegativeOne):
         ends = sorted((side / 50, side / 5))
-        found = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions)
-        if found.truth is Truth.UNDECIDED and found.bound is not None:
-            return True
-    return False
+        finding = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions)
+        found.append(finding.truth is Truth.UNDECIDED and finding.bound is not None)
+    return found[0], found[1]

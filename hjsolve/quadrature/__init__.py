@@ -13,6 +13,7 @@ from sympy.core.function import AppliedUndef
 
 from hjsolve.algebra.budget import limit
 from hjsolve.errors import OutOfTime
+from hjsolve.quadrature.elliptic import ELLIPTIC
 from hjsolve.quadrature.family import Family
 from hjsolve.quadrature.folded import FOLDED
 from hjsolve.quadrature.plain import PLAIN
@@ -28,6 +29,7 @@ FAMILIES: tuple[Family, ...] = (
     RADICAL,
     FOLDED,
     PLAIN,
+    ELLIPTIC,
     UNEVALUATED,
 )
 

@@ -9,11 +9,13 @@ the formula must not jump either, which no derivative would show.
 from __future__ import annotations
 
 import time
+from collections.abc import Sequence
 from fractions import Fraction
 
 import numpy as np
 from flint import arb
 from sympy import Expr, Symbol
+from sympy.core.relational import Relational
 
 from hjsolve.algebra.balls import BallWalk, Imprecise, NotSupported, OutsideDomain, precision
 from hjsolve.algebra.graph import Graph, TooLarge
@@ -31,7 +33,9 @@ STEEP = 4.0
 """A step this many times larger than the integrand allows for is looked at closely."""
 
 PATHS = 3
-"""Points whose neighbourhood is searched for jumps."""
+"""Points whose neighbourhood is searched for jumps; one for a graph of LONG or more nodes."""
+
+LONG = 250
 
 
 def holds(
@@ -41,10 +45,15 @@ def holds(
     domain: Domain,
     points: Sample,
     deadline: float = float("inf"),
+    within: Sequence[Relational] = (),
 ) -> bool:
-    """Whether the formula differentiates back at the points and does not jump."""
+    """Whether the formula differentiates back at the points and does not jump.
+
+    Jumps are looked for on the interval around a point on which the integrand
+    is real and the conditions ``within`` hold: beyond a pole is another formula.
+    """
     try:
-        graph = Graph([antiderivative, integrand])
+        graph = Graph([antiderivative, integrand, *(r.gts - r.lts for r in within)])
     except (TooLarge, TypeError):
         return False
     count = points.values.shape[1]
@@ -59,8 +68,9 @@ def holds(
             decided += verdict is True
         if decided < min(WANTED, count):
             return False
+        paths = PATHS if len(graph.nodes) < LONG else 1
         return all(
-            _continuous(graph, points.exact(i), variable, domain) for i in range(min(PATHS, count))
+            _continuous(graph, points.exact(i), variable, domain) for i in range(min(paths, count))
         )
     except NotSupported:
         return False
@@ -74,7 +84,7 @@ def _derivative_agrees(
     for bits in (192, 512):
         with precision(bits):
             try:
-                formula, integrand = walk.run()
+                formula, integrand = walk.run()[:2]
             except Imprecise:
                 continue
             except OutsideDomain:
@@ -97,7 +107,7 @@ def _continuous(
     point without a finite value, is looked at again in balls.
     """
     grid = _neighbourhood(graph, point, variable, domain)
-    values, slopes = _along(graph, point, variable, grid)
+    values, slopes = _along(graph, point, variable, grid)[:2]
     finite = np.flatnonzero(np.isfinite(values))
     if len(finite) < 3:
         return True
@@ -190,7 +200,10 @@ def _neighbourhood(
     low = low if ends[0] is None else max(low, float(ends[0]))
     high = high if ends[1] is None else min(high, float(ends[1]))
     grid = np.unique(np.concatenate([np.linspace(low, high, 402)[1:-1], [centre]]))
-    real = np.isfinite(_along(graph, point, variable, grid)[1])
+    _, integrand, *sides = _along(graph, point, variable, grid)
+    real = np.isfinite(integrand)
+    for side in sides:
+        real &= ~(side < 0)
     start = stop = int(np.searchsorted(grid, centre))
     while start > 0 and real[start - 1]:
         start -= 1

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 
 import sympy as sp
 from sympy import Add, Eq, Expr, Function, Symbol
@@ -34,14 +35,14 @@ def complete(separation: Separation, integrate: Integrate) -> CompleteIntegral:
     terms = tuple(_term(e, domain[e.coordinate], integrate) for e in separation.equations)
     time_term = _time_term(separation, integrate)
     whole = len(terms) == len(h.coordinates)
-    characteristic = _sum(terms, sp.S.Zero) if whole else None
-    principal = _sum(terms, time_term) if whole and time_term is not None else None
+    characteristic = _sum(terms, sp.S.Zero, h.names) if whole else None
+    principal = _sum(terms, time_term, h.names) if whole and time_term is not None else None
     return CompleteIntegral(hamilton_jacobi(h), terms, time_term, characteristic, principal)
 
 
 def hamilton_jacobi(h: Hamiltonian) -> Relational:
     """H(q, ∂S/∂q, t) + ∂S/∂t = 0, or H(q, ∂W/∂q) = α₁ for an autonomous system."""
-    names = {s.name for s in h.expression.free_symbols} | set(h.functions)
+    names = h.names
     letter = "S" if h.explicit_time else "W"
     while letter in names:
         letter += "_"
@@ -59,6 +60,10 @@ def hamilton_jacobi(h: Hamiltonian) -> Relational:
 
 def _term(equation: SeparatedEquation, domain: Domain, integrate: Integrate) -> Term:
     q = equation.coordinate
+    if equation.where:
+        reason = "the momentum is known as a root of its polynomial only"
+        left = Antiderivative(equation.drift, q, (), "unevaluated", None, reason)
+        return Term(equation, left, integrate(sp.S.Zero, q, domain))
     return Term(
         equation,
         integrate(equation.drift, q, domain),
@@ -72,10 +77,12 @@ def _time_term(separation: Separation, integrate: Integrate) -> Expr | None:
         return None
     if not momentum.has(t):
         return momentum * t
-    return integrate(momentum, t, Domain()).formula.expression
+    whole = integrate(momentum, t, Domain())
+    everywhere = tuple(f for f in whole.closed_forms if not f.valid)
+    return replace(whole, closed_forms=everywhere).formula(separation.hamiltonian.names).expression
 
 
-def _sum(terms: tuple[Term, ...], time_term: Expr) -> Formula:
+def _sum(terms: tuple[Term, ...], time_term: Expr, taken: frozenset[str]) -> Formula:
     """Σ_i drift_i + sign_i·root_i, with the names and conditions of its parts."""
     parts: list[Expr] = [time_term]
     where: list[Definition] = []
@@ -88,7 +95,7 @@ def _sum(terms: tuple[Term, ...], time_term: Expr) -> Formula:
         ):
             if antiderivative.integrand == 0:
                 continue
-            form = antiderivative.formula
+            form = antiderivative.formula(taken)
             parts.append(factor * form.expression)
             where += [d for d in (*term.equation.where, *form.where) if d not in where]
             valid += [v for v in form.valid if v not in valid]

@@ -11,6 +11,7 @@ from sympy import Expr, Le
 from hjsolve.algebra.balls import NotSupported
 from hjsolve.algebra.graph import TooLarge
 from hjsolve.quadrature import check
+from hjsolve.quadrature.factored import Unclear, with_names
 from hjsolve.quadrature.points import sample
 from hjsolve.quadrature.problem import Problem, Reading
 from hjsolve.quadrature.ratios import GivenUp, Key
@@ -71,9 +72,17 @@ def algebraic(
     terms: Callable[[Reduction], int],
     *,
     boundaries: bool = True,
+    readings: list[Reading] | None = None,
+    restricted: float = 10.0,
 ) -> Outcome | None:
-    """The checked formulas in the cheapest kernel in which every piece has one."""
-    priced = [(r.cost(cost), i, r) for i, r in enumerate(problem.readings())]
+    """The checked formulas in the cheapest kernel in which every piece has one.
+
+    ``readings`` are those to choose from, all of the problem's when None;
+    ``restricted`` is the cost of a condition on the variable.
+    """
+    if readings is None:
+        readings = problem.readings()
+    priced = [(r.cost(cost, restricted), i, r) for i, r in enumerate(readings)]
     ranked = sorted((c, i, r) for c, i, r in priced if c < float("inf"))
     reason: GivenUp | None = None
     if ranked:
@@ -111,6 +120,11 @@ def _checked(
             raise GivenUp("the integrand cannot be evaluated for the check") from failure
         if points is None:
             continue
+        if candidate.where:
+            try:
+                points = with_names(points, candidate.where)
+            except Unclear as failure:
+                raise GivenUp("a root could not be evaluated for the check") from failure
         if not check.holds(
             candidate.expression,
             problem.integrand,

@@ -11,7 +11,7 @@ from sympy import Add, Expr, Mul, Pow, Rational, Symbol
 from hjsolve.quadrature.circular import circular
 from hjsolve.quadrature.hyperbolic import exponential, hyperbolic
 from hjsolve.quadrature.kernel import CIRCULAR, HYPERBOLIC, Kernel
-from hjsolve.quadrature.powers import powers
+from hjsolve.quadrature.powers import powers, square
 from hjsolve.quadrature.ratios import GivenUp
 from hjsolve.records import Domain
 
@@ -36,6 +36,33 @@ def candidates(integrand: Expr, variable: Symbol, domain: Domain) -> Iterator[Ke
             yield exponential(base, multiples, variable, domain)
     else:
         raise GivenUp("circular and exponential functions, or others, are mixed")
+
+
+def further(integrand: Expr, variable: Symbol, domain: Domain) -> Iterator[Kernel]:
+    """The square of the variable, and half the argument of a function.
+
+    u = sin(θ/2) makes the radicand of cos θ an even quartic.
+    """
+    outside, functions = _shape(integrand, variable)
+    if not functions:
+        yield from square(integrand, variable, domain)
+    if outside or not functions:
+        return
+    base, multiples = _common_argument([f.args[0] for f in functions], variable)
+    kinds = {type(f) for f in functions}
+    doubled = {a: 2 * n for a, n in multiples.items()}
+    if kinds <= set(CIRCULAR):
+        yield from (
+            k
+            for k in circular(base / 2, doubled, variable, domain)
+            if isinstance(k.expression, (sp.sin, sp.cos))
+        )
+    elif kinds <= {sp.exp, *HYPERBOLIC}:
+        yield from (
+            k
+            for k in hyperbolic(base / 2, doubled, variable, domain)
+            if isinstance(k.expression, (sp.sinh, sp.cosh))
+        )
 
 
 def _shape(integrand: Expr, q: Symbol) -> tuple[bool, list[Expr]]:

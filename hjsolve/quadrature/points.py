@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -14,6 +15,7 @@ from sympy.core.relational import Relational
 
 from hjsolve.algebra.balls import BallWalk, Imprecise, NotSupported, OutsideDomain, precision
 from hjsolve.algebra.graph import Graph
+from hjsolve.quadrature.elliptic_floats import FLOATS
 from hjsolve.records import Domain
 
 Floats = NDArray[np.float64]
@@ -35,14 +37,22 @@ BITS = 192
 
 @dataclass(frozen=True)
 class Sample:
-    """Points of a regime: a value for each symbol, the variable among them."""
+    """Points of a regime: a value for each symbol, the variable among them.
+
+    ``extra`` holds values that are no rational numbers, for each point: something
+    that gives a ball when called, and a float (the roots a formula names).
+    """
 
     symbols: tuple[Symbol, ...]
     values: Floats
+    extra: tuple[dict[Symbol, Any], ...] = ()
 
-    def exact(self, i: int) -> dict[Symbol, Fraction]:
+    def exact(self, i: int) -> dict[Symbol, Any]:
         """The i-th point as rational numbers."""
-        return {s: Fraction(float(v)) for s, v in zip(self.symbols, self.values[:, i], strict=True)}
+        point: dict[Symbol, Any] = {
+            s: Fraction(float(v)) for s, v in zip(self.symbols, self.values[:, i], strict=True)
+        }
+        return {**point, **self.extra[i]} if self.extra else point
 
 
 def floats(graph: Graph, values: dict[Symbol, Floats]) -> list[Floats]:
@@ -85,6 +95,8 @@ def _operation(op: str, payload: Any, a: list[Any], values: dict[Symbol, Floats]
             return np.arctan2(a[0], a[1])
         case "exp" | "log" | "sin" | "cos" | "abs" | "sign":
             return getattr(np, op)(a[0])
+        case "call" if payload[0] in FLOATS and not any(payload[1]):
+            return FLOATS[payload[0]](*(np.asarray(x, dtype=float) for x in a))
     raise NotSupported(op)
 
 
@@ -100,13 +112,58 @@ def sample(
     None when none was found.  Raises TypeError, NotSupported, TooLarge when the
     integrand has parts that cannot be evaluated.
     """
+    for found, graph in _drawn(integrand, variable, domain, valid, seed):
+        kept = [
+            i
+            for i in range(min(3 * KEPT, found.values.shape[1]))
+            if _inside(graph, found.exact(i), valid)
+        ]
+        if kept:
+            return Sample(found.symbols, found.values[:, kept[:KEPT]])
+    return None
+
+
+def crowd(
+    integrand: Expr,
+    variable: Symbol,
+    domain: Domain,
+    valid: Sequence[Relational],
+    seed: int,
+    count: int,
+    first: int = 0,
+) -> tuple[Sample, Callable[[int], bool]] | None:
+    """Up to ``count`` points of one draw, in floating point, and the check of one in balls.
+
+    ``first`` is the place in SPREADS to begin with.  None when the draw met none.
+    Raises as ``sample`` does.
+    """
+    for found, graph in _drawn(integrand, variable, domain, valid, seed, first):
+        if found.values.shape[1]:
+            few = Sample(found.symbols, found.values[:, :count])
+            return few, partial(_confirmed, graph, few, valid)
+    return None
+
+
+def _confirmed(graph: Graph, points: Sample, valid: Sequence[Relational], i: int) -> bool:
+    return _inside(graph, points.exact(i), valid)
+
+
+def _drawn(
+    integrand: Expr,
+    variable: Symbol,
+    domain: Domain,
+    valid: Sequence[Relational],
+    seed: int,
+    first: int = 0,
+) -> Iterator[tuple[Sample, Graph]]:
+    """Draws of rising spread, those points kept that look right in floating point."""
     bounds = [b for b in (domain.lower, domain.upper) if b.is_finite]
     roots = [integrand, *(side for r in valid for side in (r.lts, r.gts)), *bounds]
     graph = Graph(roots)
     names = {n.payload for n in graph.nodes if n.op == "symbol"} | {variable}
     symbols = tuple(sorted(names, key=lambda s: s.name))
     rng = np.random.default_rng(0xA11CE + seed)
-    for spread in SPREADS:
+    for spread in SPREADS[first:]:
         values = {s: _draw(s, rng, spread) for s in symbols}
         values[variable] = _draw_variable(variable, domain, values, rng, spread)
         numbers = floats(graph, values)
@@ -114,15 +171,7 @@ def sample(
         for k in range(len(valid)):
             below, above = numbers[1 + 2 * k], numbers[2 + 2 * k]
             good &= below < above if not valid[k].rel_op.endswith("=") else below <= above
-        found = Sample(symbols, np.array([values[s][good] for s in symbols]))
-        kept = [
-            i
-            for i in range(min(3 * KEPT, found.values.shape[1]))
-            if _inside(graph, found.exact(i), valid)
-        ]
-        if kept:
-            return Sample(symbols, found.values[:, kept[:KEPT]])
-    return None
+        yield Sample(symbols, np.array([values[s][good] for s in symbols])), graph
 
 
 def _inside(graph: Graph, point: dict[Symbol, Fraction], valid: Sequence[Relational]) -> bool:

@@ -82,6 +82,28 @@ def _power(q: Symbol, n: int, domain: Domain) -> Kernel:
     return Kernel(q**share, (lower**share, upper), leaf, slope, limits)
 
 
+def square(integrand: Expr, q: Symbol, domain: Domain) -> Iterator[Kernel]:
+    """Yield u = q² for an integrand that is even in q: the roots of a sextic become a quartic's."""
+    if integrand.xreplace({q: -q}) != integrand:
+        return
+
+    def odd(signs: Signs) -> Radicals:
+        return square_root(signs, signs.ring.u)
+
+    def leaf(e: Expr, signs: Signs) -> Radicals | None:
+        if e == q:
+            return odd(signs)
+        if isinstance(e, Pow) and e.base == q and isinstance(e.exp, Integer) and e.exp % 2 == 0:
+            return rational(signs, signs.ring.u ** (int(e.exp) // 2))
+        return None
+
+    def slope(signs: Signs) -> Radicals:
+        return rational(signs, signs.ring.number(2).inverse()) * odd(signs).inverse()
+
+    limits = () if domain.lower.is_nonnegative or q.is_positive else (Lt(0, q),)
+    yield Kernel(q**2, (S.Zero, oo), leaf, slope, limits)
+
+
 def _inner_linear(q: Symbol, radicand: Expr, a: Expr, b: Expr) -> Kernel:
     u = sp.sqrt(radicand)
 

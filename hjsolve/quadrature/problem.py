@@ -17,7 +17,7 @@ from sympy import Expr, Pow, Rational, S, Symbol, oo
 
 from hjsolve.errors import OutOfTime
 from hjsolve.quadrature.kernel import Kernel
-from hjsolve.quadrature.kernels import candidates
+from hjsolve.quadrature.kernels import candidates, further
 from hjsolve.quadrature.radicals import Reader
 from hjsolve.quadrature.ratios import GivenUp, Ratio, Ring, degree, factors, opaque
 from hjsolve.quadrature.reduction import Reduction, reduce
@@ -54,6 +54,7 @@ class Problem:
     domain: Domain
     deadline: float
     _readings: list[Reading] | None = field(default=None, repr=False)
+    _further: list[Reading] | None = field(default=None, repr=False)
     _why: str = ""
 
     def left(self) -> float:
@@ -74,6 +75,20 @@ class Problem:
         if not self._readings:
             raise GivenUp(self._why or "no substitution makes the integrand algebraic")
         return self._readings
+
+    def further_readings(self) -> list[Reading]:
+        """Those in the kernels that are of use to elliptic integrals only."""
+        if self._further is None:
+            found: dict[Expr, None] = {}
+            _constants(self.integrand, self.variable, found)
+            self._further = []
+            try:
+                for kernel in further(self.integrand, self.variable, self.domain):
+                    self.left()
+                    self._further.append(Reading(self, kernel, dict(found)))
+            except GivenUp:
+                pass
+        return self._further
 
     def _collect(self) -> None:
         found: dict[Expr, None] = {}
@@ -127,13 +142,16 @@ class Reading:
             pieces.append(Piece(kernel, scale, p, reduce(self.ring, q, p), written))
         return tuple(pieces)
 
-    def cost(self, piece_cost: Callable[[Reduction, Signs], float]) -> float:
+    def cost(
+        self, piece_cost: Callable[[Reduction, Signs], float], restricted: float = 10.0
+    ) -> float:
         """The sum of a family's costs over the pieces.
 
         A kernel that holds on a part of the domain only, or whose roots have a
-        sign nobody knows, comes after all that need neither.
+        sign nobody knows, comes after all that need neither; ``restricted`` is
+        added for each end of such a part.
         """
-        total = 10.0 * len(self.kernel.restriction) + (0.0 if self.exact else 5.0)
+        total = restricted * len(self.kernel.restriction) + (0.0 if self.exact else 5.0)
         for piece in self.pieces:
             signs = self.signs(kernel=piece.kernel, guess=True)
             total += piece_cost(piece.reduction, signs)

@@ -7,18 +7,18 @@ no table of cases is kept, and no piecewise expression is ever built.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
 
 from sympy import Add, Expr, Mul, Symbol, false, true
 from sympy.core.relational import Relational
 
 from hjsolve.quadrature.dress import Dress
-from hjsolve.quadrature.problem import Piece, Reading
+from hjsolve.quadrature.problem import Piece, Problem, Reading
 from hjsolve.quadrature.ratios import GivenUp, degree, factors
 from hjsolve.quadrature.reduction import Reduction
 from hjsolve.quadrature.signs import Assumption, Signs, Undetermined
-from hjsolve.records import Formula
+from hjsolve.records import Definition, Formula
 
 REGIME_LIMIT = 16
 """More regimes than this are not worth having; the integral is left as it stands."""
@@ -26,11 +26,16 @@ REGIME_LIMIT = 16
 
 @dataclass(frozen=True)
 class Context:
-    """What a formula may ask: signs, the writer, and whether its term is the only one."""
+    """What a formula may ask: signs, the writer, and whether its term is the only one.
+
+    A formula may put names it introduces into ``names``; they begin with ``stem``.
+    """
 
     signs: Signs
     dress: Dress
     only: bool
+    names: list[Definition] = field(default_factory=list)
+    stem: str = "e"
 
 
 _HALF = Fraction(1, 2)
@@ -49,6 +54,7 @@ def regimes(
     leaves: list[tuple[Formula, tuple[Assumption, ...]]] = []
     stack: list[tuple[Assumption, ...]] = [()]
     tried = 0
+    stem = stem_of(reading.problem)
     while stack:
         assumed = stack.pop()
         tried += 1
@@ -60,25 +66,34 @@ def regimes(
             pieces = reading.under(assumed)
             only = sum(terms(piece.reduction) for piece in pieces) == 1
             total: list[Expr] = []
+            names: list[Definition] = []
             for piece in pieces:
                 kernel = piece.kernel
                 signs = reading.signs(assumed, kernel)
                 writer = Dress(signs, kernel)
                 scale = writer.product((piece.scale, _HALF))
-                e = formula(piece, Context(signs, writer, only))
+                e = formula(piece, Context(signs, writer, only, names, stem))
                 total.extend(Mul(scale, term) for term in Add.make_args(e))
         except Undetermined as question:
             where = kernel.expression if degree(question.poly) > 0 else None
             for sign in (-question.first, question.first):
                 stack.append((*assumed, Assumption(question.poly, sign, where)))
             continue
-        valid = _conditions(reading, assumed)
+        valid = conditions(reading, assumed)
         if valid is not None:
-            leaves.append((Formula(Add(*total), (), valid), assumed))
+            leaves.append((Formula(Add(*total), tuple(dict.fromkeys(names)), valid), assumed))
     return leaves
 
 
-def _conditions(reading: Reading, assumed: tuple[Assumption, ...]) -> tuple[Relational, ...] | None:
+def stem_of(problem: Problem) -> str:
+    """How the names of roots begin: e_ and the variable, none of the problem's names."""
+    stem = f"e_{problem.variable.name}"
+    while any(s.name.startswith(stem) for s in problem.integrand.free_symbols):
+        stem = "e_" + stem
+    return stem
+
+
+def conditions(reading: Reading, assumed: tuple[Assumption, ...]) -> tuple[Relational, ...] | None:
     """The inequalities of a regime, None when they contradict the symbols' assumptions."""
     valid: list[Relational] = list(reading.kernel.restriction)
     for a in _needed(reading, assumed):

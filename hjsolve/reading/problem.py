@@ -13,7 +13,7 @@ from collections.abc import Mapping, Sequence
 from decimal import Decimal
 from typing import Literal, cast
 
-from sympy import Expr, Rational, Symbol, oo, pi
+from sympy import Expr, I, Pow, Rational, Symbol, acos, asin, oo, pi, preorder_traversal
 
 from hjsolve.errors import InputError
 from hjsolve.reading.formula import read_formula
@@ -23,10 +23,19 @@ from hjsolve.reading.numbers import signed
 from hjsolve.reading.tokens import is_name
 from hjsolve.records import Domain, Hamiltonian, Parameter
 
-FIELDS = ("coordinates", "momenta", "hamiltonian", "parameters", "functions", "domains", "time")
+FIELDS = (
+    "coordinates",
+    "momenta",
+    "hamiltonian",
+    "parameters",
+    "functions",
+    "domains",
+    "time",
+    "charts",
+)
 """What is read here."""
 
-PASSED_OVER = ("charts", "parameter_conditions")
+PASSED_OVER = ("parameter_conditions",)
 """What belongs to the request but is read elsewhere."""
 
 _DOMAINS = {
@@ -48,7 +57,7 @@ def read_problem(problem: Mapping[str, object]) -> Hamiltonian:
     """Read a problem as posted to ``/v1/solutions``.
 
     Args:
-        problem: the decoded JSON object; ``charts`` and ``parameter_conditions`` are passed over.
+        problem: the decoded JSON object; ``parameter_conditions`` is passed over.
 
     Returns:
         The Hamiltonian, with numeric parameters put in exactly; parameters,
@@ -90,6 +99,7 @@ def read_problem(problem: Mapping[str, object]) -> Hamiltonian:
     expression = read_formula(
         problem["hamiltonian"], {**constants, **symbols}, functions, pointer="/hamiltonian"
     )
+    _refuse_complex(expression)
     _every_momentum(expression, [symbols[name] for name in momenta], coordinates, momenta)
     return Hamiltonian(
         expression=expression,
@@ -100,6 +110,7 @@ def read_problem(problem: Mapping[str, object]) -> Hamiltonian:
         numbers=tuple(sorted(numbers.items())),
         functions=tuple(sorted(functions)),
         time=symbols[time_name],
+        charts=_charts(problem.get("charts")),
     )
 
 
@@ -323,6 +334,37 @@ def _end(value: object, constants: Mapping[str, Expr], pointer: str) -> Expr:
     if isinstance(value, str):
         return read_formula(value, constants, (), pointer=pointer)
     return _number(value, pointer)
+
+
+def _charts(value: object) -> tuple[str, ...]:
+    """Empty for "as-given" (or nothing), ("search",), or the names of coordinate systems."""
+    if value is None or value == "as-given":
+        return ()
+    if value == "search":
+        return ("search",)
+    names = value if isinstance(value, list | tuple) and len(value) <= 20 else ()
+    if names and all(isinstance(name, str) and 0 < len(name) <= 40 for name in names):
+        return tuple(names)
+    raise InputError(
+        'charts is neither "as-given" nor "search" nor a list of names of coordinate systems',
+        pointer="/charts",
+        expected='"as-given", "search" or a list of names such as ["polar"]',
+        code="wrong-type",
+    )
+
+
+def _refuse_complex(expression: Expr) -> None:
+    """Refuse what is real nowhere: a root of a negative number, asin 2, (−1)^x."""
+    for part in preorder_traversal(expression):
+        negative = isinstance(part, Pow) and part.base.is_negative and not part.exp.is_integer
+        inverse = isinstance(part, (asin, acos)) and part.args[0].is_number
+        if part is I or negative or (inverse and abs(part.args[0]) > 1):
+            raise InputError(
+                f"the Hamiltonian holds {part}, which is not real for the signs declared",
+                pointer="/hamiltonian",
+                expected="a formula that is real somewhere",
+                code="not-real",
+            )
 
 
 def _every_momentum(

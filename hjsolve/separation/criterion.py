@@ -83,6 +83,8 @@ def detect(hamiltonian: Hamiltonian) -> Verdict:
         return _Detector(hamiltonian).verdict()
     except TooLarge:
         reason = "the formula's graph is larger than this program evaluates"
+    except TypeError as error:
+        reason = str(error)
     except _OutOfReach as limit:
         reason = str(limit)
     names = _with_time(hamiltonian)
@@ -108,6 +110,7 @@ class _Detector:
         self.stand = stand_ins(self.graph, hamiltonian.functions)
         self.roots = square_roots(self.graph)
         self.last_bound = 0.0
+        self.numeric: list[float] = []
         try:
             walk = JetWalk(self.graph, self.variables)
             jets, self.count = walk.jets()
@@ -126,6 +129,9 @@ class _Detector:
         blocks, proof, bound, obstruction = links
         ignorable = tuple(q for k, q in enumerate(self.h.coordinates) if k not in moving)
         blocks = _in_order(_with_time(self.h), (*blocks, *((q,) for q in ignorable)))
+        self._refuse_pieces(blocks)
+        if self.numeric:
+            proof, bound = "numeric", max(self.numeric)
         direct = _in_order(self.h.coordinates, sums[0])
         if all(len(b) == 1 for b in blocks):
             kind = "complete"
@@ -155,17 +161,55 @@ class _Detector:
                     expected="a coordinate whose momentum occurs in the Hamiltonian",
                     code="no-momentum",
                 )
-        return [k for k in range(self.n) if self._depends(k)]
+        jumpy = self._in_kinks()
+        return [k for k in range(self.n) if self._depends(k) or self.variables[k] in jumpy]
+
+    def _in_kinks(self) -> frozenset[Symbol]:
+        """Variables under |u|, sign, asin, atan: their derivatives may cancel piece by piece."""
+        return frozenset().union(*self._kinks())
+
+    def _kinks(self) -> list[frozenset[Symbol]]:
+        holds: list[frozenset[Symbol]] = []
+        for node in self.graph.nodes:
+            own = frozenset((node.payload,)) if node.op == "symbol" else frozenset()
+            holds.append(own.union(*(holds[a] for a in node.args)))
+        kinked = ("abs", "sign", "asin", "atan", "atan2")
+        return [
+            holds[k] & set(self.variables)
+            for k, node in enumerate(self.graph.nodes)
+            if node.op in kinked
+        ]
+
+    def _refuse_pieces(self, blocks: tuple[tuple[Symbol, ...], ...]) -> None:
+        """A kink across blocks: the derivatives cancel on pieces, H does not come apart.
+
+        |x + y| + |x − y| is 2x or 2y or their negative; every expression of
+        Levi-Civita vanishes off the kinks, but no S separates across them.
+        """
+        owner = {q: n for n, block in enumerate(blocks) for q in block}
+        owner |= {p: owner[q] for q, p in zip(self.h.coordinates, self.h.momenta, strict=True)}
+        for kink in self._kinks():
+            if len({owner[s] for s in kink if s in owner}) > 1:
+                names = ", ".join(sorted(s.name for s in kink))
+                raise _OutOfReach(
+                    f"an absolute value, sign or inverse function of {names} together has kinks "
+                    "or jumps, and H separates at most piece by piece between them"
+                )
 
     def _depends(self, variable: int) -> bool:
         """Whether H depends on a variable at all."""
         if self.variables[variable] not in self.h.expression.free_symbols:
             return False
-        if self.count and bool((self.gradient[:, variable] != 0).any()):
+        if self.count and self.roots < 2 and bool((self.gradient[:, variable] != 0).any()):
             return True
         if self.count and self.chance < SAFE_CHANCE and self.roots < 2:
             return False
-        return self._nonzero(lambda first, second: first(variable), (variable,), ()) is not None
+        if self._nonzero(lambda first, second: first(variable), (variable,), ()) is not None:
+            return True
+        formal = self.count and not bool((self.gradient[:, variable] != 0).any())
+        if not (formal and self.chance < SAFE_CHANCE):
+            self.numeric.append(self.last_bound)
+        return False
 
     def _components(
         self,

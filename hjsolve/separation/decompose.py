@@ -16,7 +16,7 @@ from sympy import Add, Dummy, Expr, Mul, Pow, Rational, Symbol
 
 from hjsolve.algebra.generators import Generators, NotRational
 from hjsolve.algebra.identity import vanish
-from hjsolve.algebra.isolate import INVERSES, TWO_VALUED, inverse_power, shows_sign
+from hjsolve.algebra.isolate import INVERSES, forgotten, inverse_power
 from hjsolve.records import Truth
 from hjsolve.separation.freezing import Block
 from hjsolve.separation.momentum import Solved, from_carrier, solve_for
@@ -82,8 +82,7 @@ class _Decomposer:
         k, value = _strip(k, value, moving)
         undone = _undone(k, value)
         if undone is not None:
-            if shows_sign(k):
-                self.pieces.valid.append(value)
+            self.pieces.valid.extend(forgotten(k, value))
             self.run(*undone, blocks, [])
             return
         for parts, kind in self._splits(k, blocks, groups):
@@ -194,14 +193,15 @@ def _strip(k: Expr, value: Expr, moving: frozenset[Symbol]) -> tuple[Expr, Expr]
 
 
 def _undone(k: Expr, value: Expr) -> tuple[Expr, Expr] | None:
-    """K = f(inner) = value as (inner, f⁻¹(value))."""
+    """K = f(inner) = value as (inner, f⁻¹(value)), where that loses no branch."""
     if isinstance(k, Pow) and isinstance(k.exp, Rational):
-        return k.base, inverse_power(value, k.exp)
+        one = k.exp.p % 2 or k.base.is_nonnegative
+        return (k.base, inverse_power(value, k.exp)) if one else None
     if isinstance(k, Mul) and all(isinstance(f, (Pow, sp.exp)) for f in k.args):
         merged = _merged_exponentials(k)
         if isinstance(merged, sp.exp):
             return merged.args[0], sp.log(value)
-    inverse = INVERSES.get(type(k)) or TWO_VALUED.get(type(k))
+    inverse = INVERSES.get(type(k))
     if inverse is not None:
         return k.args[0], inverse(value)
     return None
@@ -223,10 +223,15 @@ def _opened(k: Expr) -> Expr:
     try:
         opened = sp.expand(k, log=True, force=False)
         if isinstance(opened, sp.log) or opened.has(sp.log):
-            opened = sp.expand_log(opened, force=True)
+            opened = sp.expand_log(opened, force=True).replace(sp.log, _log_of_size)
     except (RecursionError, MemoryError):
         return k
     return opened
+
+
+def _log_of_size(u: Expr) -> Expr:
+    """Log |u|: log(xy) = log|x| + log|y| also where both are negative."""
+    return sp.log(u if u.is_positive else sp.Abs(u))
 
 
 def _factored(k: Expr) -> Expr:

@@ -178,21 +178,33 @@ def from_coefficients(parts: dict[int, Expr], p: Symbol) -> Solved | None:
             return Solved(sp.S.Zero, value ** Rational(1, degree), None)
         return linear(inverse_power(value, sp.Integer(degree)))
     if set(parts) <= {0, 2, 4}:
+        if not (get(2) / get(4)).is_nonnegative:
+            return _named_root(parts, p)  # both values of p² may be positive: four branches
         middle = spread(-get(2), 2 * get(4))
         inner = sp.sqrt(middle**2 + spread(-get(0), get(4)))
-        outer = 1 if get(4).is_positive else -1
-        squared = middle + outer * inner
+        squared = middle + inner
         return Solved(sp.S.Zero, sp.sqrt(squared), squared)
     return _named_root(parts, p)
 
 
 def _named_root(parts: dict[int, Expr], p: Symbol) -> Solved:
-    """The momentum as a real root of its polynomial, by name."""
-    name = Symbol(f"{p.name}_1", real=True)
-    unknown = Symbol("u", real=True)
+    """The momentum as the lowest real root of its polynomial, by name.
+
+    There is one wherever the motion is; how many more there are depends on the
+    coefficients.
+    """
+    taken = {s.name for c in parts.values() for s in c.free_symbols}
+    unknown = Symbol(_fresh("u", taken), real=True)
+    name = Symbol(_fresh(f"{p.name}_1", taken), real=True)
     polynomial = Add(*(c * unknown**k for k, c in parts.items()))
-    where = Definition(name, root_of=polynomial, unknown=unknown, index=max(parts) % 2 + 1)
+    where = Definition(name, root_of=polynomial, unknown=unknown, index=1)
     return Solved(name, sp.S.Zero, None, (where,))
+
+
+def _fresh(name: str, taken: set[str]) -> str:
+    while name in taken:
+        name += "_"
+    return name
 
 
 def _from_exponential(parts: dict[int, Expr], rate: Expr) -> Solved | None:

@@ -92,6 +92,7 @@ class _Separator:
             self._reduced(blocks, pieces, rename),
             None if time_momentum is None else time_momentum.xreplace(rename),
             canonical=not (pieces.missing or pieces.frozen),
+            extended=self.time_momentum if timing is None else None,
         )
 
     # --------------------------------------------------------------- time
@@ -152,7 +153,7 @@ class _Separator:
         seeming = [q for q in self.verdict.ignorable if k.has(q)]
         for value in (sp.S.One, sp.Rational(1, 2), sp.Rational(1, 3)):
             fixed = k.xreplace({q: value for q in seeming})
-            if not fixed.has(sp.nan, sp.zoo, sp.oo):
+            if not fixed.has(sp.nan, sp.zoo, sp.oo, sp.AccumBounds):
                 return fixed
         return k
 
@@ -200,8 +201,7 @@ class _Separator:
     def _recognised(self, integral: Expr) -> str | None:
         """The square of the angular momentum, when it is that."""
         domain = dict(zip(self.h.coordinates, self.h.domains, strict=True))
-        polar = [q for q in self.h.coordinates if domain[q].kind == "polar-angle"]
-        for theta in polar or self.h.coordinates:
+        for theta in (q for q in self.h.coordinates if domain[q].kind == "polar-angle"):
             for phi in self.h.coordinates:
                 if phi != theta:
                     p, m = self.momentum[theta], self.momentum[phi]
@@ -262,7 +262,7 @@ class _Letters:
     """alpha_1, alpha_2, … with a trailing underscore where the request uses the name."""
 
     def __init__(self, hamiltonian: Hamiltonian) -> None:
-        self.taken = _names(hamiltonian)
+        self.taken = hamiltonian.names
         self.given: list[Symbol] = []
 
     def next(self) -> Symbol:
@@ -273,19 +273,8 @@ class _Letters:
         return self.given[-1]
 
 
-def _names(hamiltonian: Hamiltonian) -> set[str]:
-    symbols = {
-        *hamiltonian.expression.free_symbols,
-        *hamiltonian.coordinates,
-        *hamiltonian.momenta,
-        hamiltonian.time,
-        *(p.symbol for p in hamiltonian.parameters),
-    }
-    return {s.name for s in symbols} | set(hamiltonian.functions)
-
-
 def _fresh(name: str, hamiltonian: Hamiltonian) -> Symbol:
-    taken = _names(hamiltonian)
+    taken = hamiltonian.names
     while name in taken:
         name += "_"
     return Symbol(name, real=True)

@@ -25,6 +25,7 @@ import sympy as sp
 from sympy import Add, Expr, Mul, Symbol
 
 from hjsolve.algebra.generators import NotRational, Ratio, coefficients, divide
+from hjsolve.algebra.hyperbolic import in_hyperbolic_functions
 from hjsolve.algebra.linear import (
     Column,
     Exponents,
@@ -264,8 +265,9 @@ class _Group(Frozen):
         for letter, powers in by_power:
             for e, value in powers.items():
                 if e != top:
-                    parts[e] = parts.get(e, sp.S.Zero) + letter * self._written(value / norm)
-        opened = {k: sp.expand_mul(c, deep=False) for k, c in parts.items()}
+                    written = Add.make_args(self._written(value / norm))
+                    parts[e] = parts.get(e, sp.S.Zero) + Add(*(letter * w for w in written))
+        opened = {k: in_hyperbolic_functions(c) for k, c in parts.items()}
         return Leaf(block, opened, whole, carrier)
 
     def _by_power(self, column: Column, n: int, momentum: int) -> dict[int, Ratio]:

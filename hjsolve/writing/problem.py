@@ -35,7 +35,15 @@ def problem_document(hamiltonian: Hamiltonian) -> dict[str, Any]:
         "functions": sorted(hamiltonian.functions),
         "domains": domains,
         "time": hamiltonian.time.name,
+        **_charts(hamiltonian.charts),
     }
+
+
+def _charts(charts: tuple[str, ...]) -> dict[str, Any]:
+    """The member ``charts``, left out for the coordinates as given."""
+    if not charts:
+        return {}
+    return {"charts": "search" if charts == ("search",) else list(charts)}
 
 
 def number_text(value: Rational) -> str:

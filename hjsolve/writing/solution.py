@@ -11,8 +11,10 @@ from sympy.core.relational import Relational
 from hjsolve.records import (
     Antiderivative,
     Certificate,
+    Chart,
     CompleteIntegral,
     Formula,
+    Geometry,
     Motion,
     Obstruction,
     SeparatedEquation,
@@ -26,6 +28,12 @@ from hjsolve.writing.infix import write_infix
 from hjsolve.writing.problem import number_text, problem_document
 
 Write: TypeAlias = Callable[[Formula | Expr | Relational | None], dict[str, Any] | None]
+
+
+MOTION_BRANCH = (
+    "The beta in q(t), p(t) are those of the relations on the branch on which every sigma is +1; "
+    "a motion that turns runs through both branches."
+)
 
 
 def solution_document(solution: Solution, *, notations: Sequence[str] = DEFAULT) -> dict[str, Any]:
@@ -44,11 +52,13 @@ def solution_document(solution: Solution, *, notations: Sequence[str] = DEFAULT)
     separation = solution.separation
     integral = solution.integral
     return {
-        "problem": problem_document(solution.hamiltonian),
+        "problem": problem_document(solution.problem),
         "verdict": verdict_object(separation.verdict),
-        "charts": [],
-        "charts_complete": False,
-        "chart_used": None,
+        "charts": [_chart(chart, write) for chart in solution.charts.found]
+        if solution.charts
+        else [],
+        "charts_complete": solution.charts.complete if solution.charts else False,
+        "chart_used": solution.chart_used,
         "hamilton_jacobi_equation": write(integral.equation if integral else None),
         "constants": [
             {
@@ -68,6 +78,27 @@ def solution_document(solution: Solution, *, notations: Sequence[str] = DEFAULT)
         "certificate": _certificate(solution.certificate),
         **_form(separation),
     }
+
+
+def _chart(chart: Chart, write: Write) -> dict[str, Any]:
+    """A coordinate system: its geometry in exact text, its map in formulas."""
+    written: dict[str, Any] = {
+        "family": chart.family,
+        "geometry": {name: _exact(value) for name, value in chart.geometry},
+        "free": [letter.name for letter in chart.free],
+        "coordinates": [q.name for q in chart.coordinates],
+        "transformation": {q.name: write(e) for q, e in chart.transformation},
+    }
+    if chart.blocks:
+        written["geometry"]["blocks"] = [_chart(block, write) for block in chart.blocks]
+    if chart.mass_map is not None:
+        written["mass_map"] = _exact(chart.mass_map)
+    return written
+
+
+def _exact(value: Geometry) -> Any:
+    """A number as infix text, vectors and rows of them as lists."""
+    return [_exact(part) for part in value] if isinstance(value, tuple) else write_infix(value)
 
 
 def _form(separation: Separation) -> dict[str, Any]:
@@ -180,6 +211,15 @@ def _motion(solution: Solution, motion: Motion, write: Write) -> dict[str, Any]:
         ],
         "coordinates": {symbol.name: write(formula) for symbol, formula in motion.coordinates},
         "momenta": {owner.get(s, s).name: write(formula) for s, formula in motion.momenta},
+        "branch": MOTION_BRANCH,
+        "regimes": [
+            {
+                "coordinate": other.coordinate.name,
+                "motion": write(other.motion),
+                "momentum": write(other.momentum),
+            }
+            for other in motion.others
+        ],
     }
 
 

@@ -103,7 +103,7 @@ def test_the_caret_of_a_long_formula_of_several_lines(tmp_path):
         (b"coordinates = [", "TOML"),
         (b"\xff\xfe", "utf-8"),
         (b'{"a": 1, "a": 2}', "twice"),
-        (b'{"coordinates": ["x"], "hamiltonian": "p_x**2", "charts": "search"}', "/charts"),
+        (b'{"coordinates": ["x"], "hamiltonian": "p_x**2", "charts": "all"}', "/charts"),
         (b'coordinates = ["x"]\nhamiltonian = "p_x**2/m"\n[parameters]\nm = inf', "/parameters/m"),
         (b'{"coordinates": ["x"], "hamiltonian": "p_x**2", "wrong": 1}', "/wrong"),
         (b'{"a":' * 20_000, "deep"),

@@ -18,6 +18,7 @@ from hjsolve.quadrature import univariate as uv
 from hjsolve.quadrature.check import holds
 from hjsolve.quadrature.family import Example
 from hjsolve.quadrature.kernels import candidates
+from hjsolve.quadrature.legendre import Normal, Sum
 from hjsolve.quadrature.oscillation import oscillating
 from hjsolve.quadrature.points import sample
 from hjsolve.quadrature.ratios import GivenUp, Ratio, Ring
@@ -201,9 +202,61 @@ def test_it_works_outside_of_the_main_thread() -> None:
 
 def test_elliptic_integrals_say_so() -> None:
     found = integrate(sqrt(2 * m * (E - a * x**4)), x, LINE)
+    assert found.family == "elliptic"
+    assert found.substitution == x
+
+
+def test_hyperelliptic_integrals_say_so() -> None:
+    found = integrate(sqrt(2 * m * (E - a * x**5 - b * x)), x, LINE)
     assert found.family == "unevaluated"
-    assert "degree 4" in found.reason
-    assert "elliptic" in found.reason
+    assert "degree 5" in found.reason
+    assert "hyperelliptic" in found.reason
+
+
+def test_rotation_runs_on_over_every_turn() -> None:
+    found = integrate(m / sqrt(2 * m * (E + a * cos(theta))), theta, LINE)
+    libration, rotation, separatrix = found.closed_forms
+    assert rotation.valid == (a < E,)
+    assert rotation.expression.has(sp.elliptic_f(theta / 2, 2 * a / (E + a)))
+    assert libration.expression.has(sp.asin)
+    assert not separatrix.expression.has(sp.elliptic_f)
+
+
+def test_named_roots_come_with_their_definition() -> None:
+    root = sqrt(E - L**2 / sin(theta) ** 2 + a * cos(theta))
+    [form] = integrate(1 / (2 * root), theta, POLAR).closed_forms
+    u = form.where[0].unknown
+    assert [d.index for d in form.where] == [1, 2, 3]
+    for d in form.where:
+        assert sp.expand(d.root_of - (a * u**3 + E * u**2 - a * u + L**2 - E)) == 0
+    low, high = form.where[1].symbol, form.where[2].symbol
+    assert form.valid == (low < cos(theta), cos(theta) < high)
+
+
+@pytest.mark.parametrize("change", [Rational(1, 10**12), Rational(-1, 7), 1])
+@pytest.mark.parametrize(
+    "integrand",
+    [m / sqrt(2 * m * (E - k * x**2 / 2 - a * x**4)), sqrt(2 * m * (E - V * sp.cosh(a * x)))],
+)
+def test_a_wrong_coefficient_is_caught(monkeypatch, integrand, change) -> None:
+    """A fault put into the table of elliptic integrals never reaches an answer."""
+    right = Sum.expression
+    assert integrate(integrand, x, LINE).family == "elliptic"
+    monkeypatch.setattr(Sum, "expression", lambda self: right(self) * (1 + change))
+    found = integrate(integrand, x, LINE)
+    assert found.family == "unevaluated"
+    assert not found.closed_forms
+
+
+def test_a_wrong_root_is_caught(monkeypatch) -> None:
+    integrand = 1 / sqrt(E - L**2 / sin(theta) ** 2 + a * cos(theta))
+    right = Normal.__init__
+
+    def wrong(self, phi, m, *rest, **named) -> None:
+        right(self, phi, m * Rational(101, 100), *rest, **named)
+
+    monkeypatch.setattr(Normal, "__init__", wrong)
+    assert integrate(integrand, theta, POLAR).family == "unevaluated"
 
 
 def test_constants_and_arbitrary_functions_of_time_pass_through() -> None:

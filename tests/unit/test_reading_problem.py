@@ -52,7 +52,9 @@ def test_defaults() -> None:
     explicit = {"momenta": None, "parameters": None, "functions": None, "domains": None}
     posted = {"coordinates": ["x"], "hamiltonian": "p_x^2 + t*x", "time": None, **explicit}
     assert read_problem(posted) == read
-    assert read_problem(posted | {"charts": "search", "parameter_conditions": True}) == read
+    assert read_problem(posted | {"charts": "as-given", "parameter_conditions": True}) == read
+    assert read_problem(posted | {"charts": "search"}).charts == ("search",)
+    assert read_problem(posted | {"charts": ["polar"]}).charts == ("polar",)
 
 
 def test_nothing_is_inferred_of_domains() -> None:

@@ -1,0 +1,36 @@
+"""Derivatives of formulas with |u| and sign(u) in them, away from their kinks."""
+
+from __future__ import annotations
+
+import sympy as sp
+from sympy import Expr, Symbol
+from sympy.core.function import AppliedUndef
+
+
+def derivative(expression: Expr, x: Symbol) -> Expr:
+    """∂expression/∂x where sign(u) is taken as constant.
+
+    SymPy's derivative of sign(u) is 2δ(u)u′, which is 0 wherever the formula
+    is used and would only end up in answers.
+    """
+    return sp.diff(expression, x).replace(sp.DiracDelta, lambda *_: sp.S.Zero)
+
+
+def is_formula(expression: Expr) -> bool:
+    """Whether an answer may hold this: no cases, infinities or derivatives left over."""
+    if expression.has(*_UNFINISHED):
+        return False
+    return all(isinstance(d.expr, AppliedUndef) for d in expression.atoms(sp.Derivative))
+
+
+_UNFINISHED = (
+    sp.nan,
+    sp.zoo,
+    sp.oo,
+    sp.S.NegativeInfinity,
+    sp.I,
+    sp.AccumBounds,
+    sp.Piecewise,
+    sp.DiracDelta,
+    sp.Subs,
+)

@@ -1,0 +1,42 @@
+"""What the conditions of a regime say of single letters."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import sympy as sp
+from sympy import Dummy, Expr, Symbol
+from sympy.core.relational import Relational
+
+
+def boundary_values(valid: Sequence[Relational]) -> dict[Symbol, Expr]:
+    """The values that letters have on a boundary: a ≤ b together with b ≤ a."""
+    pairs = list(dict.fromkeys((v.lhs, v.rhs) for v in valid if v not in (sp.true, sp.false)))
+    found: dict[Symbol, Expr] = {}
+    for low, high in pairs:
+        if (high, low) in pairs:
+            letter, value = (low, high) if low.is_Symbol and not low.is_positive else (high, low)
+            if letter.is_Symbol and not value.has(letter):
+                found[letter] = value
+    return found
+
+
+def regime(
+    valid: Sequence[Relational], keep: Symbol | None = None
+) -> tuple[dict[Symbol, Expr], list[Relational]]:
+    """What a regime says of single symbols but ``keep``, and the conditions that are left.
+
+    A symbol with a sign becomes a letter with that sign, one on a boundary the
+    value it has there.
+    """
+    valid = [v for v in valid if v not in (sp.true, sp.false)]
+    put: dict[Symbol, Expr] = dict(boundary_values(valid))
+    for v in valid:
+        if keep in (v.lhs, v.rhs) or v.lhs in put or v.rhs in put:
+            continue
+        if v.lhs == 0 and v.rhs.is_Symbol and not v.rhs.is_positive:
+            put[v.rhs] = Dummy(v.rhs.name, positive=True)
+        elif v.rhs == 0 and v.lhs.is_Symbol and not v.lhs.is_negative:
+            put[v.lhs] = -Dummy(v.lhs.name, positive=True)
+    left = [v.xreplace(put) for v in valid]
+    return put, [v for v in left if v not in (sp.true, sp.false)]

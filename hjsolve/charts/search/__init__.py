@@ -1,0 +1,1 @@
+"""In which coordinate systems does a Cartesian Hamiltonian separate?"""
