@@ -18,6 +18,12 @@ from types import FrameType
 
 from hjsolve.errors import OutOfTime
 
+AGAIN_SECONDS = 0.05
+"""How soon the timer rings again: a library may swallow an exception."""
+
+UNRAISABLE = ("gc_callback", "__del__")
+"""Functions in which Python ignores an exception."""
+
 
 @contextmanager
 def limit(seconds: float) -> Iterator[None]:
@@ -29,7 +35,9 @@ def limit(seconds: float) -> Iterator[None]:
         yield
         return
 
-    def ring(_signal: int, _frame: FrameType | None) -> None:
+    def ring(_signal: int, frame: FrameType | None) -> None:
+        if frame is not None and frame.f_code.co_name in UNRAISABLE:
+            return  # raised there it would be printed and lost; the timer rings again
         raise OutOfTime(f"more than {seconds:g} s")
 
     began = time.monotonic()
@@ -39,7 +47,7 @@ def limit(seconds: float) -> Iterator[None]:
         yield
         return
     signal.signal(signal.SIGALRM, ring)
-    signal.setitimer(signal.ITIMER_REAL, seconds)
+    signal.setitimer(signal.ITIMER_REAL, seconds, AGAIN_SECONDS)
     try:
         yield
     finally:
