@@ -18,11 +18,36 @@ from types import FrameType
 
 from hjsolve.errors import OutOfTime
 
-AGAIN_SECONDS = 0.05
-"""How soon the timer rings again: a library may swallow an exception."""
+AGAIN_SECONDS = 0.25
+"""How soon the timer rings again: a library may swallow an exception.  Long enough for
+the first one to have left every ``finally`` on its way."""
 
 UNRAISABLE = ("gc_callback", "__del__")
 """Functions in which Python ignores an exception."""
+
+_deadlines: list[float] = []
+"""When the limits now open end, outermost first."""
+
+
+def _ring(_signal: int, frame: FrameType | None) -> None:
+    """Raise when the earliest deadline has passed; stays installed, and is silent otherwise.
+
+    Giving the signal back to the system's default between limits would let a
+    late ring end the process.
+    """
+    if not _deadlines or time.monotonic() < min(_deadlines):
+        return
+    if frame is not None and frame.f_code.co_name in UNRAISABLE:
+        return
+    raise OutOfTime("a stage used up its time")
+
+
+def _arm() -> None:
+    if _deadlines:
+        left = max(min(_deadlines) - time.monotonic(), 1e-3)
+        signal.setitimer(signal.ITIMER_REAL, left, AGAIN_SECONDS)
+    else:
+        signal.setitimer(signal.ITIMER_REAL, 0)
 
 
 @contextmanager
@@ -34,25 +59,13 @@ def limit(seconds: float) -> Iterator[None]:
     if threading.current_thread() is not threading.main_thread() or seconds <= 0:
         yield
         return
-
-    def ring(_signal: int, frame: FrameType | None) -> None:
-        if frame is not None and frame.f_code.co_name in UNRAISABLE:
-            return  # raised there it would be printed and lost; the timer rings again
-        raise OutOfTime(f"more than {seconds:g} s")
-
-    began = time.monotonic()
-    outer_handler = signal.getsignal(signal.SIGALRM)
-    outer_left, _ = signal.getitimer(signal.ITIMER_REAL)
-    if outer_left and outer_left <= seconds:
-        yield
-        return
-    signal.signal(signal.SIGALRM, ring)
-    signal.setitimer(signal.ITIMER_REAL, seconds, AGAIN_SECONDS)
+    if signal.getsignal(signal.SIGALRM) is not _ring:
+        signal.signal(signal.SIGALRM, _ring)
+    depth = len(_deadlines)
     try:
+        _deadlines.append(time.monotonic() + seconds)
+        _arm()
         yield
     finally:
-        signal.setitimer(signal.ITIMER_REAL, 0)
-        signal.signal(signal.SIGALRM, outer_handler)
-        if outer_left:
-            left = max(outer_left - (time.monotonic() - began), 1e-3)
-            signal.setitimer(signal.ITIMER_REAL, left)
+        del _deadlines[depth:]
+        _arm()
