@@ -20,6 +20,7 @@ import time
 import tomllib
 from dataclasses import dataclass
 from decimal import Decimal
+from importlib import import_module
 from pathlib import Path
 from typing import Any, BinaryIO, NoReturn
 
@@ -27,6 +28,7 @@ from api.jobs.messages import Message, pack, receive
 from api.jobs.processes import die_with_parent, limit_process
 from api.jobs.worker import (
     OUT_OF_MEMORY,
+    TRANSFORM,
     perform,
     render_documents,
     transformation_documents,
@@ -36,7 +38,6 @@ from api.settings import read_settings
 from api.strict_json import read_json
 from hjsolve.errors import InputError
 from hjsolve.records import Hamiltonian, Solution, Transformation
-from hjsolve.transform import for_person as transformation_for_person
 from hjsolve.writing import as_latex, for_person
 
 SOLVED, FAILED, BAD_INPUT = 0, 1, 2
@@ -151,7 +152,7 @@ def _run_child(
     def render_transformation(found: Transformation) -> tuple[bytes, ...]:
         if form == "json":
             return (transformation_documents(found)[0],)
-        return (transformation_for_person(found).encode(),)
+        return (import_module(TRANSFORM).for_person(found).encode(),)
 
     try:
         die_with_parent(parent)

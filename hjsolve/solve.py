@@ -5,12 +5,13 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import lru_cache
+from importlib import import_module
+from types import ModuleType
 
 from sympy import Expr, Symbol
 
 from hjsolve.algebra.budget import limit
 from hjsolve.certification import certify
-from hjsolve.charts import CHARTS, in_chart, named, search, upright
 from hjsolve.errors import Fault, InputError, OutOfTime
 from hjsolve.motion import set_in_motion
 from hjsolve.quadrature import integrate as quadrature
@@ -118,6 +119,15 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
     raise Fault("the verdict itself was refuted by its certificate")
 
 
+def _charts() -> ModuleType:
+    """The charts room, loaded when a problem asks for it.
+
+    Building the catalogue takes a quarter of what loading SymPy takes, and
+    most problems on the command line stay in their own coordinates.
+    """
+    return import_module("hjsolve.charts")
+
+
 def refuse_unknown_charts(hamiltonian: Hamiltonian) -> None:
     """Refuse names of coordinate systems that the catalogue does not have.
 
@@ -126,7 +136,7 @@ def refuse_unknown_charts(hamiltonian: Hamiltonian) -> None:
     """
     if hamiltonian.charts in ((), ("search",)):
         return
-    known = [c.family for c in CHARTS if c.dimension == len(hamiltonian.coordinates)]
+    known = [c.family for c in _charts().CHARTS if c.dimension == len(hamiltonian.coordinates)]
     for name in hamiltonian.charts:
         if name.rsplit("/", 1)[-1] not in known:
             raise InputError(
@@ -150,15 +160,16 @@ class Placed:
 
 def _placed(hamiltonian: Hamiltonian, verdict: Verdict) -> Placed:
     """The charts asked for; the first that separates is used where the given one does not."""
+    room = _charts()
     if hamiltonian.charts == ("search",):
-        charts = search(hamiltonian, detect)
+        charts = room.search(hamiltonian, detect)
         tried = charts.found
     else:
-        tried = tuple(named(hamiltonian, name) for name in hamiltonian.charts)
+        tried = tuple(room.named(hamiltonian, name) for name in hamiltonian.charts)
         charts = Charts((), False, reason="only the coordinate systems named were tried")
     separating = []
     for chart in tried:
-        carried = in_chart(hamiltonian, upright(chart))
+        carried = room.in_chart(hamiltonian, room.upright(chart))
         found = detect(carried)
         if found.separability == "complete":
             separating.append((chart, carried, found))

@@ -41,7 +41,10 @@ def main(control_descriptor: int, parent: int, memory_bytes: int, worker_module:
     """Carry out orders until the control socket is closed."""
     die_with_parent(parent)
     control = socket.socket(fileno=control_descriptor)
-    serve: Serve = importlib.import_module(worker_module).serve
+    module = importlib.import_module(worker_module)
+    for name in getattr(module, "PRELOADED", ()):
+        importlib.import_module(name)
+    serve: Serve = module.serve
     gc.collect()
     gc.freeze()  # else the first collection in a worker copies every page
     print("ready", __version__, flush=True)

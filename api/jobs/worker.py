@@ -24,9 +24,9 @@ import json
 import socket
 import traceback
 from collections.abc import Callable
+from importlib import import_module
 from typing import Any
 
-from api.jobs.in_numbers import answer_in_numbers
 from api.jobs.messages import SIZE_LIMIT, Message, pack, receive
 from api.jobs.processes import limit_cpu, limit_process, peak_memory_bytes
 from hjsolve import __version__
@@ -34,8 +34,11 @@ from hjsolve.errors import Fault, InputError, OutOfTime
 from hjsolve.reading import read_problem
 from hjsolve.records import Hamiltonian, Solution, Transformation
 from hjsolve.solve import refuse_unknown_charts, solve
-from hjsolve.transform import document, transform
 from hjsolve.writing import content_id, problem_document, solution_document
+
+#: Loaded when a task needs them; a service loads them beforehand, once for all its workers.
+NUMBERS, TRANSFORM = "api.jobs.in_numbers", "hjsolve.transform"
+PRELOADED = (NUMBERS, TRANSFORM, "hjsolve.charts")
 
 #: Time on the processor beyond the deadline after which the kernel ends a worker.
 CPU_MARGIN_SECONDS = 10.0
@@ -85,7 +88,8 @@ def perform(
             return _numbers(task)
         if task.kind == "transform":
             rendered = render_transformation or transformation_documents
-            return _sized("transformed", rendered(transform(json.loads(task.parts[0]))))
+            found = import_module(TRANSFORM).transform(json.loads(task.parts[0]))
+            return _sized("transformed", rendered(found))
         hamiltonian = read_problem(json.loads(task.parts[0]))
         refuse_unknown_charts(hamiltonian)
         if task.kind == "read":
@@ -120,7 +124,7 @@ def perform(
 
 def _numbers(task: Message) -> dict[str, Any]:
     work = json.loads(task.parts[0])
-    text = answer_in_numbers(
+    text = import_module(NUMBERS).answer_in_numbers(
         task.kind, work["problem"], work["request"], str(task.header.get("answer", "json"))
     )
     if len(text) > SIZE_LIMIT:
@@ -150,7 +154,7 @@ def _sized(kind: str, parts: tuple[bytes, ...]) -> dict[str, Any]:
 
 def transformation_documents(found: Transformation) -> tuple[bytes, bytes]:
     """A transformation as JSON text, without and with MathML."""
-    full = document(found, ("infix", "latex", "mathml"))
+    full = import_module(TRANSFORM).document(found, ("infix", "latex", "mathml"))
     return _json_text(without_mathml(full)), _json_text(full)
 
 
