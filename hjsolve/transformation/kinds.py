@@ -159,7 +159,8 @@ def _function(
         if function is None:
             continue
         share = _agreement(function, v, setting, maps)
-        if any(share) and (best is None or share > best[0]):
+        sought = next((x for x, side in zip(share, _sides(maps), strict=False) if side), share[0])
+        if sought and (best is None or share > best[0]):
             best = (share, function)
         if share == EVERYWHERE:
             break
@@ -182,12 +183,18 @@ def _determined(v: Variables, maps: Maps) -> Iterator[dict[Symbol, Expr]]:
                 yield values
 
 
+def _sides(maps: Maps) -> tuple[Sequence[Point], ...]:
+    """The points of the branch, those first at which a function has to be right."""
+    return maps.favoured, maps.positive, (*maps.positive, *maps.points)
+
+
 def _agreement(function: Expr, v: Variables, setting: Setting, maps: Maps) -> tuple[float, ...]:
     """The share of the branch's points at which the relations of F hold on the transformation.
 
     First at those with all new variables and old coordinates positive, then at
     those with all new variables positive, then at all; EVERYWHERE where they
-    hold identically.  A function that gives another branch has a share of 0.
+    hold identically.  A function that gives another branch has a share of 0, and
+    one that fails at all points of the first kind there is is of no use.
     """
     left = residues(function, v)
     values = maps.old_in_new or maps.new_in_old or {}
@@ -199,8 +206,7 @@ def _agreement(function: Expr, v: Variables, setting: Setting, maps: Maps) -> tu
         if all(met):
             return EVERYWHERE
         there = [p for p, m in zip(every, met, strict=True) if m]
-        sides = (maps.favoured, maps.positive, every)
-        return tuple(sum(p in there for p in side) / max(len(side), 1) for side in sides)
+        return tuple(sum(p in there for p in side) / max(len(side), 1) for side in _sides(maps))
     findings = vanish(put, setting.ranges, setting.functions)
     proved = all(f.truth is Truth.PROVED for f in findings)
     return EVERYWHERE if proved else (0.0,)
