@@ -9,7 +9,7 @@ and carries its assumptions from then on.
 from __future__ import annotations
 
 from collections.abc import Collection
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from enum import StrEnum
 from typing import TYPE_CHECKING, Literal, TypeAlias
 
@@ -252,6 +252,11 @@ class Antiderivative:
         start = Symbol(name, real=True)
         words = f"reference point: any fixed value of {q.name} in the interval of motion"
         return Formula(Integral(self.integrand, (q, start, q)), (Definition(start, free=words),))
+
+    def everywhere(self, taken: Collection[str]) -> Formula:
+        """As ``formula``, from the closed forms that hold without a condition."""
+        free = tuple(f for f in self.closed_forms if not f.valid)
+        return replace(self, closed_forms=free).formula(taken)
 
 
 @dataclass(frozen=True, slots=True)

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, replace
-from functools import lru_cache
+from functools import lru_cache, partial
 from importlib import import_module
 from types import ModuleType
+from typing import TypeVar
 
 from sympy import Expr, Symbol
 
@@ -31,6 +32,7 @@ from hjsolve.records import (
 from hjsolve.separation import detect, separate
 
 OnStage = Callable[[str, Solution | None], None]
+T = TypeVar("T")
 
 SECONDS = {"charts": 30.0, "separate": 20.0, "integrate": 20.0, "motion": 15.0, "certify": 20.0}
 """How long a stage may take before the ones after it go on without it."""
@@ -45,78 +47,69 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
 
     Raises:
         InputError: a coordinate turns out to have no momentum in H.
-        Fault: a result was refuted by its own certificate.
+        Fault: the verdict or a coordinate system was refuted by its own
+            certificate; any other refuted result is left out and named there.
     """
     posed = hamiltonian
     tell = on_stage or (lambda _name, _found: None)
     integrate = lru_cache(maxsize=None)(_contained)  # W, the relations and q(t) share integrals
     tell("separate", None)
-    late: list[str] = []
+    late: list[Check] = []
     verdict = detect(hamiltonian)
     placed = Placed(hamiltonian, verdict)
     if hamiltonian.charts:
         tell("charts", Solution(Separation(hamiltonian, verdict)))
-        try:
-            with limit(SECONDS["charts"]):
-                placed = _placed(hamiltonian, verdict)
-        except OutOfTime:
-            late.append("the coordinate systems: stopped at the time limit of their stage")
-        except (InputError, Fault):
-            raise
-        except Exception as error:
-            late.append(_broken("the coordinate systems", error))
+        what = "the coordinate systems"
+        found = _stage("charts", what, partial(_placed, hamiltonian, verdict), late)
+        placed = found or placed
     hamiltonian, verdict = placed.hamiltonian, placed.verdict
-    separation = Separation(hamiltonian, verdict)
-    try:
-        with limit(SECONDS["separate"]):
-            separation = separate(hamiltonian, verdict)
-    except OutOfTime:
-        late.append("the separated equations: stopped at the time limit of their stage")
-    except Exception as error:
-        late.append(_broken("the separated equations", error))
+    bare = Separation(hamiltonian, verdict)
+    what = "the separated equations"
+    separation = _stage("separate", what, partial(separate, hamiltonian, verdict), late) or bare
     tell("integrate", Solution(separation))
-    integral = None
-    try:
-        with limit(SECONDS["integrate"]):
-            integral = complete(separation, integrate)
-    except OutOfTime:
-        late.append("the complete integral: stopped at the time limit of its stage")
-    except Exception as error:
-        late.append(_broken("the complete integral", error))
+    what = "the complete integral"
+    integral = _stage("integrate", what, partial(complete, separation, integrate), late)
     tell("motion", Solution(separation, integral))
     motion = None
     if integral is not None:
-        try:
-            with limit(SECONDS["motion"]):
-                motion = set_in_motion(separation, integral, integrate)
-        except OutOfTime:
-            late.append("the equations of motion: stopped at the time limit of their stage")
-        except Exception as error:
-            late.append(_broken("the equations of motion", error))
+        what = "the equations of motion"
+        motion = _stage("motion", what, partial(set_in_motion, separation, integrate), late)
     tell("certify", Solution(separation, integral, motion))
-    unfinished = tuple(
-        Check(
-            what if ":" in what else f"{what}: stopped at the time limit", Truth.UNDECIDED, "none"
-        )
-        for what in late
-    )
     solution = Solution(separation, integral, motion)
-    for kept in (solution, Solution(separation), Solution(Separation(hamiltonian, verdict))):
+    for kept in (solution, Solution(separation), Solution(bare)):
         try:
             certificate = _certified(kept)
         except Fault as fault:
             text = f"{fault}; what rests on it is left out"
-            unfinished = (*unfinished, Check(text, Truth.UNDECIDED, "none"))
+            late.append(_left_out(text))
             continue
-        found = placed.charts.checks if placed.charts else ()
+        first = placed.charts.checks if placed.charts else ()
         return replace(
             kept,
-            certificate=Certificate((*found, *certificate.checks, *unfinished)),
+            certificate=Certificate((*first, *certificate.checks, *late)),
             charts=placed.charts,
             chart_used=placed.used,
             posed=posed,
         )
     raise Fault("the verdict itself was refuted by its certificate")
+
+
+def _stage(name: str, what: str, work: Callable[[], T], late: list[Check]) -> T | None:
+    """One stage within its time; what it leaves out is told in ``late``."""
+    try:
+        with limit(SECONDS[name]):
+            return work()
+    except OutOfTime:
+        late.append(_left_out(f"{what}: stopped at the time limit of the stage"))
+    except Exception as error:
+        if name == "charts" and isinstance(error, (InputError, Fault)):
+            raise  # a name or a system that is wrong, not a stage that failed
+        late.append(_left_out(_broken(what, error)))
+    return None
+
+
+def _left_out(text: str) -> Check:
+    return Check(text, Truth.UNDECIDED, "none")
 
 
 def _charts() -> ModuleType:
@@ -191,7 +184,7 @@ def _certified(solution: Solution) -> Certificate:
         raise
     except Exception as error:
         what = _broken("the certificate", error)
-    return Certificate((Check(what, Truth.UNDECIDED, "none"),))
+    return Certificate((_left_out(what),))
 
 
 def _contained(integrand: Expr, variable: Symbol, domain: Domain) -> Antiderivative:

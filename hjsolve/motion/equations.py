@@ -8,7 +8,7 @@ differentiating a finished antiderivative does the opposite.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import sympy as sp
 from sympy import Add, Eq, Expr, Symbol
@@ -18,7 +18,6 @@ from hjsolve.algebra.calculus import derivative
 from hjsolve.motion.explicit import explicit
 from hjsolve.records import (
     Antiderivative,
-    CompleteIntegral,
     Definition,
     Domain,
     Formula,
@@ -39,9 +38,7 @@ class Quadrature:
     root: Antiderivative
 
 
-def set_in_motion(
-    separation: Separation, integral: CompleteIntegral, integrate: Integrate
-) -> Motion | None:
+def set_in_motion(separation: Separation, integrate: Integrate) -> Motion | None:
     """The Jacobi relations and the explicit motion; None unless H separates completely.
 
     ``integrate`` is the quadrature room's function.
@@ -102,10 +99,7 @@ def _time_part(separation: Separation, alpha: Symbol, integrate: Integrate) -> E
     inner = derivative(separation.time_momentum, alpha)
     if not inner.has(t):
         return inner * t
-    whole = integrate(inner, t, Domain())
-    everywhere = tuple(f for f in whole.closed_forms if not f.valid)
-    formula = replace(whole, closed_forms=everywhere).formula(separation.hamiltonian.names)
-    return formula.expression
+    return integrate(inner, t, Domain()).everywhere(separation.hamiltonian.names).expression
 
 
 def _relation(

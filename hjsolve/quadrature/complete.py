@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 
 import sympy as sp
 from sympy import Add, Eq, Expr, Function, Symbol
@@ -77,9 +76,7 @@ def _time_term(separation: Separation, integrate: Integrate) -> Expr | None:
         return None
     if not momentum.has(t):
         return momentum * t
-    whole = integrate(momentum, t, Domain())
-    everywhere = tuple(f for f in whole.closed_forms if not f.valid)
-    return replace(whole, closed_forms=everywhere).formula(separation.hamiltonian.names).expression
+    return integrate(momentum, t, Domain()).everywhere(separation.hamiltonian.names).expression
 
 
 def _sum(terms: tuple[Term, ...], time_term: Expr, taken: frozenset[str]) -> Formula:

@@ -105,8 +105,8 @@ class _Detector:
         self.graph = Graph([hamiltonian.expression])
         time = (hamiltonian.time,) if hamiltonian.explicit_time else ()
         self.variables = (*hamiltonian.coordinates, *hamiltonian.momenta, *time)
-        self.index = {v: k for k, v in enumerate(self.variables)}
         self.ranges = ranges(hamiltonian)
+        self.kinks = self._kinks()
         self.stand = stand_ins(self.graph, hamiltonian.functions)
         self.roots = square_roots(self.graph)
         self.last_bound = 0.0
@@ -161,14 +161,11 @@ class _Detector:
                     expected="a coordinate whose momentum occurs in the Hamiltonian",
                     code="no-momentum",
                 )
-        jumpy = self._in_kinks()
+        jumpy = frozenset().union(*self.kinks)
         return [k for k in range(self.n) if self._depends(k) or self.variables[k] in jumpy]
 
-    def _in_kinks(self) -> frozenset[Symbol]:
-        """Variables under |u|, sign, asin, atan: their derivatives may cancel piece by piece."""
-        return frozenset().union(*self._kinks())
-
     def _kinks(self) -> list[frozenset[Symbol]]:
+        """Variables under each |u|, sign, asin, atan: derivatives may cancel piece by piece."""
         holds: list[frozenset[Symbol]] = []
         for node in self.graph.nodes:
             own = frozenset((node.payload,)) if node.op == "symbol" else frozenset()
@@ -188,7 +185,7 @@ class _Detector:
         """
         owner = {q: n for n, block in enumerate(blocks) for q in block}
         owner |= {p: owner[q] for q, p in zip(self.h.coordinates, self.h.momenta, strict=True)}
-        for kink in self._kinks():
+        for kink in self.kinks:
             if len({owner[s] for s in kink if s in owner}) > 1:
                 names = ", ".join(sorted(s.name for s in kink))
                 raise _OutOfReach(
