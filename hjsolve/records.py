@@ -305,18 +305,38 @@ class OtherRegime:
 
 
 @dataclass(frozen=True, slots=True)
+class Parametrisation:
+    """The motion by a parameter of its own, for coordinates whose q(t) stays implicit.
+
+    ``coordinates`` and ``momenta`` are functions of ``parameter``.  ``rates`` are
+    the derivatives by it of time and the ignorable coordinates, as functions of
+    the coordinates; ``laws`` their integrals, up to the constants that they name.
+    """
+
+    parameter: Symbol
+    coordinates: tuple[tuple[Symbol, Formula], ...]
+    momenta: tuple[tuple[Symbol, Formula], ...]
+    rates: tuple[tuple[Symbol, Formula], ...]
+    laws: tuple[tuple[Symbol, Formula], ...]
+    says: str
+
+
+@dataclass(frozen=True, slots=True)
 class Motion:
     """The Jacobi relations, and q(t), p(t) where they invert.
 
     ``coordinates`` and ``momenta`` have one entry a coordinate; None where
     only the implicit relations exist for general constants.  ``others`` are
     further regimes: other energies, boundaries between regimes.
+    ``parametrisations`` give the coordinates that stay implicit in time by a
+    common parameter, one a regime.
     """
 
     relations: tuple[Relation, ...]
     coordinates: tuple[tuple[Symbol, Formula | None], ...]
     momenta: tuple[tuple[Symbol, Formula | None], ...]
     others: tuple[OtherRegime, ...] = ()
+    parametrisations: tuple[Parametrisation, ...] = ()
 
 
 # ------------------------------------------------------------ certification

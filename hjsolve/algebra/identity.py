@@ -26,6 +26,7 @@ from hjsolve.algebra.balls import (
 )
 from hjsolve.algebra.graph import Graph, TooLarge
 from hjsolve.algebra.modular import NoPoints, Walk
+from hjsolve.algebra.named import Names
 from hjsolve.algebra.roots import unify_roots
 from hjsolve.algebra.sampling import Range, points, stand_ins
 from hjsolve.records import Truth
@@ -91,23 +92,26 @@ def vanish(
     tries: int = 24,
     conditions: Sequence[Relational] = (),
     positive: Collection[Expr] = (),
+    names: Names | None = None,
 ) -> list[Finding]:
     """A Finding for each expression.
 
     ``ranges`` limits where a symbol lives, ``conditions`` which points count,
     ``functions`` names the arbitrary functions, ``positive`` holds expressions
-    known to be positive there.  With two or more roots a
-    modular zero is checked once more in balls, because the branches drawn
-    might all differ from the real one.
+    known to be positive there; ``names`` are symbols that depend on others, some
+    of which a formal zero has in their stead.  With two or more roots a modular
+    zero is checked once more in balls, because the branches drawn might all
+    differ from the real one.
     """
     findings = []
+    freed = names.eliminated(_under_roots(expressions)) if names is not None else {}
     for expression in expressions:
-        finding = _formal(expression)
+        finding = _formal(expression.xreplace(freed))
         if finding is None and (positive or _roots(expression)):
-            finding = _formal(unify_roots(expression, positive))
+            finding = _formal(unify_roots(expression.xreplace(freed), positive))
         if finding is None or len(_roots(expression)) > 1:
             enough = ENOUGH if finding is None else REFEREES
-            seen = refute(expression, ranges or {}, functions, tries, conditions, enough)
+            seen = refute(expression, ranges or {}, functions, tries, conditions, enough, names)
             if finding is None or seen.truth is Truth.REFUTED:
                 finding = seen
         findings.append(finding)
@@ -127,6 +131,10 @@ def _formal(expression: Expr) -> Finding | None:
     return None
 
 
+def _under_roots(expressions: Sequence[Expr]) -> set[Symbol]:
+    return {s for e in expressions for base in _roots(e) for s in base.free_symbols}
+
+
 def _roots(expression: Expr) -> set[Expr]:
     return {p.base for p in expression.atoms(Pow) if p.exp.is_Rational and p.exp.q % 2 == 0}
 
@@ -138,6 +146,7 @@ def refute(
     tries: int = 24,
     conditions: Sequence[Relational] = (),
     enough: int = 8,
+    names: Names | None = None,
 ) -> Finding:
     """Look for a real point at which a ball excludes 0.
 
@@ -154,16 +163,19 @@ def refute(
         return Finding(Truth.UNDECIDED, "graph too large")
     stand = stand_ins(graph, functions)
     symbols = {n.payload for g in (graph, sides) for n in g.nodes if n.op == "symbol"}
+    if names is not None:
+        symbols = (symbols - names.symbols) | names.letters
     largest: float | None = None
     met = 0
-    for point in points(symbols, ranges, tries if not conditions else 10 * tries):
-        if conditions and not _meets(sides, point):
+    for drawn in points(symbols, ranges, tries if not conditions else 10 * tries):
+        point = drawn if names is None else names.at(drawn)
+        if point is None or (conditions and not _meets(sides, point)):
             continue
         value = enclose(graph, point, stand)
         if value is None:
             continue
         if not value.contains(0):
-            return Finding(Truth.REFUTED, "balls", None, tuple(point.items()), middle(value))
+            return Finding(Truth.REFUTED, "balls", None, tuple(drawn.items()), middle(value))
         size = 0.0 if value.is_zero() else max(float(abs(value).upper()), 1e-300)
         largest = size if largest is None else max(largest, size)
         met += 1
@@ -172,7 +184,7 @@ def refute(
     return Finding(Truth.UNDECIDED, "balls", largest)
 
 
-def _meets(sides: Graph, point: Mapping[Symbol, Fraction]) -> bool:
+def _meets(sides: Graph, point: Mapping[Symbol, Any]) -> bool:
     """Whether rhs − lhs is positive for every condition (equality does not count)."""
     try:
         with precision(128):
@@ -182,7 +194,7 @@ def _meets(sides: Graph, point: Mapping[Symbol, Fraction]) -> bool:
 
 
 def enclose(
-    graph: Graph, point: Mapping[Symbol, Fraction], functions: Mapping[str, Ridges]
+    graph: Graph, point: Mapping[Symbol, Any], functions: Mapping[str, Ridges]
 ) -> Any | None:
     """The ball of a graph's only root, or None where it has no real value."""
     last = None

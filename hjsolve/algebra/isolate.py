@@ -17,19 +17,23 @@ class Isolated:
     valid: tuple[Expr, ...]
 
 
-def isolate(k: Expr, value: Expr, x: Symbol) -> Isolated | None:
+def isolate(k: Expr, value: Expr, x: Symbol, *, fractions: bool = False) -> Isolated | None:
     """X from k = value; None where a step has no inverse.
 
     Every inverse taken is the analytic one: asin(u) = v gives u = sin(v) for
     all v, so that a motion found within one branch continues past its end.
+    With ``fractions`` x may occur several times in a fraction that is linear in
+    one function of x above and below.
     """
-    if k.count(x) != 1:
+    if not fractions and k.count(x) != 1:
         return None
     half: Expr = sp.S.Zero
     valid: list[Expr] = []
     while k != x:
         valid.extend(forgotten(k, value))
         step = _undo(k, value, x)
+        if step is not None and step[0] == k:
+            step = _fraction(k, value, x) if half == 0 else None
         if step is None:
             return None
         inner, undone, both = step
@@ -73,6 +77,29 @@ def inverse_power(value: Expr, exponent: Rational) -> Expr:
     if odd and abs(exponent.p) != 1 and not value.is_nonnegative:
         return sp.sign(value) * sp.Abs(value) ** (1 / exponent)
     return value ** (1 / exponent)
+
+
+def _fraction(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:
+    """The u and its value for (a + b u)/(c + d u) = value, u(x) being all that holds x."""
+    above, below = sp.fraction(sp.together(k))
+    functions = {f for e in (above, below) for f in _generators(e, x)}
+    if len(functions) != 1:
+        return None
+    (u,) = functions
+    letter = sp.Dummy("u", real=True)
+    sides = []
+    for e in (above, below):
+        inner = e.xreplace({u: letter})
+        if inner.has(x) or sp.degree(inner, letter) > 1:
+            return None
+        sides += [sp.Poly(inner, letter).coeff_monomial(letter**n) for n in (0, 1)]
+    a, b, c, d = sides
+    return u, (a - value * c) / (value * d - b), False
+
+
+def _generators(e: Expr, x: Symbol) -> set[Expr]:
+    """The factors with x of the terms of a polynomial."""
+    return {f for term in Add.make_args(sp.expand(e)) for f in Mul.make_args(term) if f.has(x)}
 
 
 def _undo(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:

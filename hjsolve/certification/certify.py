@@ -19,8 +19,10 @@ from sympy.core.relational import Relational
 from hjsolve.algebra.brackets import brackets, independent
 from hjsolve.algebra.budget import limit
 from hjsolve.algebra.identity import Finding, vanish
+from hjsolve.algebra.named import Names
 from hjsolve.algebra.regimes import regime
 from hjsolve.algebra.sampling import Range
+from hjsolve.certification.parametrised import parametrised
 from hjsolve.errors import Fault, OutOfTime
 from hjsolve.records import (
     Antiderivative,
@@ -30,6 +32,7 @@ from hjsolve.records import (
     Formula,
     Hamiltonian,
     Motion,
+    Parametrisation,
     SeparatedEquation,
     Separation,
     Truth,
@@ -290,24 +293,33 @@ def _motion(separation: Separation, motion: Motion, ranges: dict[Symbol, Range])
         q = other.coordinate
         changed = known | {q: other.motion, momentum[q]: other.momentum}
         cases.append((q, changed, f" in regime {n} of the further ones"))
-    return [
+    claims: list[Claim] = [
         (
             f"Hamilton's equations of {q.name}{where}",
-            partial(_hamilton_check, separation, q, momentum[q], f, where, ranges),
+            partial(_hamilton, separation, q, momentum[q], f, where, ranges),
         )
         for q, f, where in cases
     ]
+    for given in motion.parametrisations:
+        claims.append(
+            (f"the motion by {given.parameter.name}", partial(_by, separation, given, ranges))
+        )
+    return claims
 
 
-def _hamilton_check(
-    separation: Separation,
-    q: Symbol,
-    p: Symbol,
-    formulas: dict[Symbol, Formula],
-    where: str,
-    ranges: dict[Symbol, Range],
-) -> list[Check]:
-    return [_hamilton(separation, q, p, formulas, where, ranges)]
+def _by(separation: Separation, given: Parametrisation, ranges: dict[Symbol, Range]) -> list[Check]:
+    """Hamilton's equations along a motion given by a parameter, on the first and last branch."""
+    names = ", ".join(q.name for q, _ in given.coordinates)
+    claim = f"{names} as functions of {given.parameter.name} satisfy Hamilton's equations"
+    branches = _branches(separation.equations)
+    findings = [
+        finding
+        for branch in branches[:1] + branches[-1:]
+        for finding in parametrised(separation, given, branch, ranges)
+    ]
+    if not findings:
+        return [Check(claim, Truth.UNDECIDED, "it rests on a coordinate left implicit")]
+    return [_check(claim, findings)]
 
 
 def _hamilton(
@@ -317,7 +329,7 @@ def _hamilton(
     formulas: dict[Symbol, Formula],
     where: str,
     ranges: dict[Symbol, Range],
-) -> Check:
+) -> list[Check]:
     """Hamilton's equations for one pair, along ``formulas``, on the first and last branch."""
     h = separation.hamiltonian
     known = {s: f.expression for s, f in formulas.items()}
@@ -325,18 +337,19 @@ def _hamilton(
     rate, force = sp.diff(h.expression, p), -sp.diff(h.expression, q)
     needed = (rate.free_symbols | force.free_symbols) & {*h.coordinates, *h.momenta} | {q, p}
     if not needed <= set(known):
-        return Check(claim, Truth.UNDECIDED, "it rests on a coordinate left implicit")
-    valid = tuple(dict.fromkeys(v for s in needed for v in formulas[s].valid))
+        return [Check(claim, Truth.UNDECIDED, "it rests on a coordinate left implicit")]
+    valid = (*dict.fromkeys(v for s in needed for v in formulas[s].valid), *_inside(h, q))
+    defined = tuple(dict.fromkeys(d for s in needed for d in formulas[s].where))
+    names = Names(defined) if defined else None
     findings: list[Finding] = []
     branches = _branches(separation.equations)
     for branch in branches[:1] + branches[-1:]:
         put = {s: e.xreplace(branch) for s, e in known.items()}
-        inside = _inside(h, q)
-        signs, conditions = regime(tuple(v.xreplace(put) for v in (*valid, *inside)))
+        signs, conditions = regime(tuple(v.xreplace(put) for v in valid))
         residues = [
             (sp.diff(put[q], h.time) - rate.xreplace(put)).xreplace(signs),
             (sp.diff(put[p], h.time) - force.xreplace(put)).xreplace(signs),
         ]
         positive = [c.rhs for c in conditions if c.lhs == 0]
-        findings += vanish(residues, ranges, h.functions, 60, conditions, positive)
-    return _check(claim, findings)
+        findings += vanish(residues, ranges, h.functions, 60, conditions, positive, names)
+    return [_check(claim, findings)]

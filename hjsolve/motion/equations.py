@@ -15,6 +15,7 @@ from sympy import Add, Eq, Expr, Symbol
 from sympy.core.relational import Relational
 
 from hjsolve.algebra.calculus import derivative
+from hjsolve.motion.common import parametrisations
 from hjsolve.motion.explicit import explicit
 from hjsolve.records import (
     Antiderivative,
@@ -71,7 +72,10 @@ def set_in_motion(separation: Separation, integrate: Integrate) -> Motion | None
     found = explicit(separation, phases, integrate)
     coordinates = tuple((q, found.coordinates.get(q)) for q in h.coordinates)
     momenta = tuple((p, found.momenta.get(p)) for p in h.momenta)
-    return Motion(relations, coordinates, momenta, tuple(found.others))
+    explicitly = {q for q, f in coordinates if f is not None}
+    letters = {c.symbol: beta for c, beta in zip(separation.constants, betas, strict=True)}
+    further = parametrisations(separation, explicitly, letters, integrate)
+    return Motion(relations, coordinates, momenta, tuple(found.others), further)
 
 
 def slope(e: SeparatedEquation, alpha: Symbol) -> Expr:

@@ -17,6 +17,7 @@ from sympy.core.relational import Relational
 from hjsolve.algebra.functions import jacobi_am, jacobi_cn, jacobi_dn, jacobi_sn
 from hjsolve.algebra.identity import refute
 from hjsolve.algebra.isolate import isolate
+from hjsolve.algebra.named import Names
 from hjsolve.records import Domain, Truth
 
 Invert = Callable[[Expr, Symbol, Symbol], tuple[Expr, ...]]
@@ -79,10 +80,7 @@ def _jacobi(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     if outer is None or outer.half != 0 or form.xreplace({integral: whole}).has(q) or m.has(q):
         return ()
     amplitude = Dummy("A", real=True)
-    inverse = Dummy("w", real=True)
-    turned = phi.xreplace({1 / q: inverse})
-    below = turned.has(inverse) and not turned.has(q)
-    inner = isolate(turned, amplitude, inverse) if below else isolate(phi, amplitude, q)
+    inner = isolate(phi, amplitude, q, fractions=True)
     if inner is None:
         return ()
     found: list[Expr] = []
@@ -91,7 +89,7 @@ def _jacobi(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
             # asin v before π − asin v
             found.insert(0, sp.expand(e.replace(sp.acos, _through_asin)))
         else:
-            found.append(1 / e if below else e)
+            found.append(e)
     return tuple(_in_jacobi(e, amplitude, outer.centre, m) for e in found)
 
 
@@ -99,6 +97,7 @@ def _in_jacobi(path: Expr, amplitude: Symbol, u: Expr, m: Expr) -> Expr:
     """A function of the amplitude in sn, cn, dn of (u, m)."""
     s, c = jacobi_sn(u, m), jacobi_cn(u, m)
     half = amplitude / 2
+    path = path.replace(sp.tan, lambda x: _tangent(x, amplitude))
     path = path.xreplace(
         {
             sp.tan(half): s / (1 + c),
@@ -121,6 +120,15 @@ def _in_jacobi(path: Expr, amplitude: Symbol, u: Expr, m: Expr) -> Expr:
         if sp.cancel(rate + m * at) == 0:
             put[power] = sp.sqrt(sp.factor_terms(at)) * jacobi_dn(u, m)
     return path.xreplace(put)
+
+
+def _tangent(x: Expr, amplitude: Symbol) -> Expr:
+    """tan(amplitude + c) by tan(amplitude) and tan c."""
+    shift, moving = x.as_independent(amplitude, as_Add=True)
+    if shift == 0 or moving != amplitude:
+        return sp.tan(x)
+    a, b = sp.tan(amplitude), sp.tan(shift)
+    return (a + b) / (1 - a * b)
 
 
 def _about(centre: Expr, half: Expr) -> tuple[Expr, ...]:
@@ -165,20 +173,22 @@ def invert(
     domain: Domain,
     valid: Sequence[Relational],
     admissible: Callable[[Expr], bool] = lambda _path: True,
+    names: Names | None = None,
 ) -> list[tuple[Expr, tuple[Relational, ...]]]:
     """Every q(τ) with form(q) = τ, with what it needs beyond ``valid``.
 
     A candidate is put back into the form; where that contradicts τ near τ = 0
     inside the regime, it belongs to another branch.  Of two values about a
     common centre each is right on its own side only, and says so.
-    ``admissible`` is the caller's own check of a candidate.
+    ``admissible`` is the caller's own check of a candidate, ``names`` are those
+    that the form introduces.
     """
     for inversion in INVERSIONS:
         candidates = inversion.invert(form, q, tau)
         good = [
             path
             for path in candidates
-            if (len(candidates) == 1 or any(returns(form, q, tau, path, domain, valid)))
+            if (len(candidates) == 1 or any(returns(form, q, tau, path, domain, valid, names)))
             and admissible(path)
         ]
         if not good:
@@ -202,7 +212,13 @@ def _side(half: Expr, centre: Expr, q: Symbol, tau: Symbol) -> tuple[Relational,
 
 
 def returns(
-    form: Expr, q: Symbol, tau: Symbol, path: Expr, domain: Domain, valid: Sequence[Relational]
+    form: Expr,
+    q: Symbol,
+    tau: Symbol,
+    path: Expr,
+    domain: Domain,
+    valid: Sequence[Relational],
+    names: Names | None = None,
 ) -> tuple[bool, bool]:
     """Whether form(path) = τ in balls, for τ a little above 0 and a little below."""
     # at a boundary, a ≤ b and b ≤ a, the symbol is gone from the form
@@ -213,6 +229,6 @@ def returns(
     found = []
     for side in (sp.S.One, sp.S.NegativeOne):
         ends = sorted((side / 50, side / 5))
-        finding = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions)
+        finding = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions, names=names)
         found.append(finding.truth is Truth.UNDECIDED and finding.bound is not None)
     return found[0], found[1]

@@ -15,22 +15,18 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from flint import arb, ctx
 from sympy import Expr, Lt, S, Symbol, sqrt
 from sympy.core.relational import Relational
 
-from hjsolve.algebra.balls import BallWalk, Imprecise, OutsideDomain, precision
+from hjsolve.algebra.balls import Imprecise, OutsideDomain
 from hjsolve.algebra.graph import Graph
+from hjsolve.algebra.named import MARGIN, DefinedBall, RootBall
 from hjsolve.quadrature import univariate as uv
 from hjsolve.quadrature.dress import Dress
 from hjsolve.quadrature.points import Sample, floats
 from hjsolve.quadrature.ratios import Ratio, degree, factors
 from hjsolve.quadrature.signs import Signs
 from hjsolve.records import Definition
-
-MARGIN = 1e-5
-"""Roots closer than this, relative to their size, are not told apart at a point."""
-
 
 LONG = 8
 """A root of a quadratic factor with more operations gets a name."""
@@ -75,7 +71,7 @@ class Layout:
 
     def balls(self, point: Mapping[Symbol, Any]) -> dict[Symbol, RootBall]:
         """The named roots at the point."""
-        return {s: RootBall(c, point, value) for s, c, value in self.starts}
+        return {s: RootBall(Graph(list(c)), point, value) for s, c, value in self.starts}
 
     @property
     def key(self) -> tuple[Any, ...]:
@@ -93,72 +89,6 @@ class Factor:
     def degree(self) -> int:
         """The degree in u."""
         return len(self.coefficients) - 1
-
-
-class RootBall:
-    """A real root of a polynomial at a point, as a ball at the working precision."""
-
-    def __init__(
-        self, coefficients: tuple[Expr, ...], point: Mapping[Symbol, Any], start: float
-    ) -> None:
-        self._walk = BallWalk(Graph(list(coefficients)), point, {})
-        self._start = start
-        self._known: dict[int, Any] = {}
-
-    def __float__(self) -> float:
-        return self._start
-
-    def __call__(self) -> Any:
-        """The ball; raises Imprecise where Newton's method does not settle on a simple root."""
-        bits = int(ctx.prec)
-        if bits not in self._known:
-            self._known[bits] = self._refined(bits)
-        return self._known[bits]
-
-    def _refined(self, bits: int) -> Any:
-        try:
-            ctx.prec = bits + 64
-            c = [jet.value for jet in self._walk.run()]
-
-            def value(x: Any) -> tuple[Any, Any]:
-                p, slope = arb(0), arb(0)
-                for a in reversed(c):
-                    slope = slope * x + p
-                    p = p * x + a
-                return p, slope
-
-            x = arb(self._start)
-            for _ in range(12):
-                p, slope = value(x)
-                x = (x - p / slope).mid()
-            radius = (abs(x) + arb(2) ** -60) * arb(2) ** (-bits - 16)
-            left, right = value(x - radius)[0], value(x + radius)[0]
-            if not left * right < 0:
-                raise Imprecise
-            if abs(float(x) - self._start) > MARGIN * (abs(self._start) + 1e-30):
-                raise Imprecise
-            return x + arb(0, 1) * radius
-        finally:
-            ctx.prec = bits
-
-
-class DefinedBall:
-    """A defined name at a point, as a ball at the working precision."""
-
-    def __init__(self, definition: Expr, point: Mapping[Symbol, Any]) -> None:
-        self._walk = BallWalk(Graph([definition]), point, {})
-        self._known: dict[int, Any] = {}
-
-    def __float__(self) -> float:
-        with precision(96):
-            return float(self().mid())
-
-    def __call__(self) -> Any:
-        """The ball; raises Imprecise, OutsideDomain."""
-        bits = int(ctx.prec)
-        if bits not in self._known:
-            self._known[bits] = self._walk.run()[0].value
-        return self._known[bits]
 
 
 class Factored:
@@ -325,7 +255,7 @@ def with_names(points: Sample, where: tuple[Definition, ...]) -> Sample:
         try:
             for d in where:
                 if d.definition is not None:
-                    point[d.symbol] = ball = DefinedBall(d.definition, point)
+                    point[d.symbol] = ball = DefinedBall(Graph([d.definition]), point)
                     float(ball)
         except (Imprecise, OutsideDomain) as failure:
             raise Unclear from failure

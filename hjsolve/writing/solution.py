@@ -220,6 +220,17 @@ def _motion(solution: Solution, motion: Motion, write: Write) -> dict[str, Any]:
             }
             for other in motion.others
         ],
+        "parametrisations": [
+            {
+                "parameter": given.parameter.name,
+                "says": given.says,
+                "coordinates": {q.name: write(f) for q, f in given.coordinates},
+                "momenta": {owner.get(p, p).name: write(f) for p, f in given.momenta},
+                "rates": {s.name: write(f) for s, f in given.rates},
+                "laws": {s.name: write(f) for s, f in given.laws},
+            }
+            for given in motion.parametrisations
+        ],
     }
 
 

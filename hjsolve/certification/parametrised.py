@@ -1,0 +1,114 @@
+"""The certificate of a motion given by a parameter.
+
+With the rates dt/dλ and dφ/dλ as functions of the coordinates, Hamilton's
+equations by the chain rule are an identity between algebraic functions of the
+coordinates on each branch; what is left of elliptic functions is that p(λ) lies
+on its separated equation, that dq/dλ has the right value, and that the laws are
+the integrals of the rates.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import sympy as sp
+from sympy import Expr, Symbol
+
+from hjsolve.algebra.functions import jacobi_am, jacobi_dn
+from hjsolve.algebra.identity import Finding, refute, vanish
+from hjsolve.algebra.named import Names
+from hjsolve.algebra.regimes import boundary_values, regime
+from hjsolve.algebra.sampling import Range
+from hjsolve.records import Parametrisation, Separation, Truth
+
+
+def parametrised(
+    separation: Separation,
+    given: Parametrisation,
+    branch: Mapping[Symbol, Expr],
+    ranges: Mapping[Symbol, Range],
+) -> list[Finding]:
+    """The findings on one branch; empty where H holds a coordinate that is not given."""
+    h, parameter = separation.hamiltonian, given.parameter
+    formulas = (*given.coordinates, *given.momenta)
+    pairs = tuple(zip(h.coordinates, h.momenta, strict=True))
+    known = {s: f.expression.xreplace(dict(branch)) for s, f in formulas}
+    rates = {s: f.expression for s, f in given.rates}
+    needed = h.expression.free_symbols & set(h.coordinates)
+    if h.time not in rates or not needed <= set(known):
+        return []
+    valid = tuple(dict.fromkeys(v for _, f in formulas for v in f.valid))
+    put = boundary_values(valid)
+    clock = rates.pop(h.time)
+    velocity = {q: sp.cancel(clock * sp.diff(h.expression, p)) for q, p in pairs}
+    # on the separated equations, in the coordinates themselves
+    equations = {e.momentum: e for e in separation.equations}
+    solved = {p: e.solution.xreplace(dict(branch)).xreplace(put) for p, e in equations.items()}
+    algebraic = [rate - velocity[q].xreplace(solved) for q, rate in rates.items()]
+    for q, p in pairs:
+        if q in known:
+            slope = sp.diff(solved[p], q) * velocity[q]
+            algebraic.append((slope + clock * sp.diff(h.expression, q)).xreplace(solved))
+    own = [v for v in valid if not v.free_symbols & _named(given)]
+    signs, conditions = regime(own)
+    findings = vanish([e.xreplace(signs) for e in algebraic], ranges, h.functions, 60, conditions)
+    # along the motion
+    moving: list[Expr] = []
+    for q, p in pairs:
+        if q in known:
+            e = equations[p]
+            root = (known[p] - e.drift.xreplace(known)) ** 2 - (e.root**2).xreplace(known)
+            moving += [
+                root.xreplace(put),
+                sp.diff(known[q], parameter) - velocity[q].xreplace(known),
+            ]
+    for symbol, law in given.laws:
+        rate = dict(given.rates)[symbol].expression.xreplace(known)
+        moving.append(sp.diff(law.expression.xreplace(dict(branch)), parameter) - rate)
+    return findings + _along(moving, separation, given, known, ranges)
+
+
+def _named(given: Parametrisation) -> set[Symbol]:
+    return {d.symbol for _, f in given.coordinates for d in f.where}
+
+
+def _along(
+    residues: list[Expr],
+    separation: Separation,
+    given: Parametrisation,
+    known: Mapping[Symbol, Expr],
+    ranges: Mapping[Symbol, Range],
+) -> list[Finding]:
+    """Whether functions of λ vanish, for the constants of the regime."""
+    valid = dict.fromkeys(v for _, f in given.coordinates for v in f.valid)
+    signs, conditions = regime(tuple(v.xreplace(dict(known)) for v in valid))
+    where = tuple(dict.fromkeys(d for _, f in given.coordinates for d in f.where))
+    names = Names(where) if where else None
+    positive = [c.rhs for c in conditions if c.lhs == 0]
+    functions = separation.hamiltonian.functions
+    findings = []
+    for residue in (r.xreplace(signs) for r in residues):
+        short = residue.replace(_is_delta, _as_delta)
+        if short != residue:
+            seen = refute(residue, ranges, functions, 60, conditions, names=names)
+            if seen.truth is Truth.REFUTED or seen.bound is None:
+                findings.append(seen)
+                continue
+        findings += vanish([short], ranges, functions, 60, conditions, positive, names)
+    return findings
+
+
+def _is_delta(e: Expr) -> bool:
+    """Whether e is a power of √(1 − m sin² am(u, m)), which is dn(u, m) for m < 1."""
+    if not (isinstance(e, sp.Pow) and e.exp.is_Rational and e.exp.q == 2):
+        return False
+    found = e.base.atoms(jacobi_am)
+    if len(found) != 1:
+        return False
+    (am,) = found
+    return bool(sp.expand(e.base - 1 + am.args[1] * sp.sin(am) ** 2) == 0)
+
+
+def _as_delta(e: Expr) -> Expr:
+    (am,) = e.base.atoms(jacobi_am)
+    return jacobi_dn(*am.args) ** (2 * e.exp)

@@ -1,0 +1,125 @@
+"""A coordinate as a function of the parameter in which its quadrature is inverted."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Collection
+from dataclasses import dataclass
+
+import sympy as sp
+from sympy import Add, Expr, Symbol
+from sympy.core.relational import Relational
+
+from hjsolve.algebra.calculus import derivative, is_formula
+from hjsolve.algebra.functions import jacobi_cn, jacobi_dn, jacobi_sn
+from hjsolve.algebra.identity import refute
+from hjsolve.algebra.named import Names
+from hjsolve.algebra.regimes import boundary_values
+from hjsolve.motion.inversions import invert, returns
+from hjsolve.records import Antiderivative, Definition, Domain, SeparatedEquation, Truth
+
+Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
+
+
+@dataclass(frozen=True, slots=True)
+class Path:
+    """q(τ) in one regime; ``form`` is τ(q), which it inverts."""
+
+    at: Expr
+    form: Expr
+    valid: tuple[Relational, ...]
+    where: tuple[Definition, ...] = ()
+
+
+def paths(
+    e: SeparatedEquation,
+    integrand: Expr,
+    speed: Expr,
+    tau: Symbol,
+    domain: Domain,
+    functions: Collection[str],
+    integrate: Integrate,
+) -> list[Path]:
+    """Every q(τ) with dτ = integrand dq, which is speed dq/root where there is a root."""
+    q = e.coordinate
+    found = []
+    for form in integrate(integrand, q, domain).closed_forms:
+        valid = tuple(dict.fromkeys((*form.valid, *e.valid)))
+        names = Names(form.where) if form.where else None
+        case = _Case(e, speed, tau, domain, functions, form.expression, valid, names)
+        for at, side in invert(form.expression, q, tau, domain, valid, case.runs, names):
+            needed = dict.fromkeys((*valid, *side, *case.half_time(at)))
+            kept = tuple(v for v in needed if v != sp.true)
+            found.append(Path(at, form.expression, kept, form.where))
+    return found
+
+
+@dataclass(frozen=True, slots=True)
+class _Case:
+    """A closed form that is to be inverted, in its regime."""
+
+    equation: SeparatedEquation
+    speed: Expr
+    tau: Symbol
+    domain: Domain
+    functions: Collection[str]
+    form: Expr
+    valid: tuple[Relational, ...]
+    names: Names | None
+
+    def runs(self, path: Expr) -> bool:
+        """Whether the momentum along a path is real and that of the separated equation."""
+        e, q = self.equation, self.equation.coordinate
+        slope = derivative(path, self.tau)
+        if not (is_formula(path) and is_formula(slope)):
+            return False
+        conditions = [v.xreplace({q: path}) for v in self.valid if v.rel_op in ("<", ">")]
+        momentum = e.drift if e.root == 0 else (self.speed * slope) ** 2 - e.root**2
+        residue = momentum.xreplace(boundary_values(self.valid)).xreplace({q: path})
+        if e.root == 0:  # only whether it has a real value
+            residue = Add(residue, -residue, evaluate=False)
+        around = {self.tau: (-sp.S.One, sp.S.One)}
+        found = refute(residue, around, self.functions, 60, conditions, names=self.names)
+        if found.truth is Truth.REFUTED:
+            return False
+        return found.bound is not None or not self.form.has(sp.Abs)
+
+    def half_time(self, path: Expr) -> tuple[Relational, ...]:
+        """The sign of τ that a path needs where its momentum, having one branch, cannot turn."""
+        e, tau = self.equation, self.tau
+        if e.root != 0:
+            return ()
+        after, before = returns(self.form, e.coordinate, tau, path, self.domain, self.valid)
+        if after and not before:
+            return (sp.Le(0, tau, evaluate=False),)
+        if before and not after:
+            return (sp.Le(tau, 0, evaluate=False),)
+        return ()
+
+
+def turns(path: Expr, tau: Symbol) -> bool:
+    """Whether q(τ) has a turning point, so that both signs of p are on one path."""
+    oscillating = path.atoms(sp.sin, sp.cos, jacobi_sn, jacobi_cn, jacobi_dn)
+    if any(f.has(tau) for f in oscillating):
+        below = (p for p in path.atoms(sp.Pow) if p.exp.is_negative)
+        if not any(f.has(tau) for p in below for f in p.atoms(jacobi_sn, jacobi_cn, jacobi_dn)):
+            return True
+    return bool(sp.expand(path - path.xreplace({tau: -tau})) == 0) or _parabola(path, tau)
+
+
+def _parabola(path: Expr, tau: Symbol) -> bool:
+    return path.is_polynomial(tau) and sp.degree(path, tau) == 2
+
+
+def square(root: Expr) -> Expr:
+    """root², without its radical sign."""
+    if isinstance(root, sp.Pow) and root.exp == sp.Rational(1, 2):
+        return root.base
+    return root**2
+
+
+def along(e: SeparatedEquation, path: Expr, tau: Symbol, speed: Expr, sign: Expr) -> Expr:
+    """The momentum along q(τ), ``sign`` being the orientation of τ."""
+    drift = e.drift.xreplace({e.coordinate: path})
+    if e.root == 0:
+        return drift
+    return drift + sign * speed.xreplace({e.coordinate: path}) * derivative(path, tau)
