@@ -338,6 +338,14 @@ class Motion:
     others: tuple[OtherRegime, ...] = ()
     parametrisations: tuple[Parametrisation, ...] = ()
 
+    def without(self, parts: Collection[OtherRegime | Parametrisation]) -> Motion:
+        """The motion less some of its further regimes and parametrisations."""
+        return replace(
+            self,
+            others=tuple(o for o in self.others if o not in parts),
+            parametrisations=tuple(p for p in self.parametrisations if p not in parts),
+        )
+
 
 # ------------------------------------------------------------ certification
 
@@ -354,9 +362,13 @@ class Check:
 
 @dataclass(frozen=True, slots=True)
 class Certificate:
-    """All that was checked of an answer."""
+    """All that was checked of an answer.
+
+    ``left_out`` are the further regimes and parametrisations that were refuted.
+    """
 
     checks: tuple[Check, ...] = ()
+    left_out: tuple[OtherRegime | Parametrisation, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -86,6 +86,7 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
         first = placed.charts.checks if placed.charts else ()
         return replace(
             kept,
+            motion=kept.motion and kept.motion.without(certificate.left_out),
             certificate=Certificate((*first, *certificate.checks, *late)),
             charts=placed.charts,
             chart_used=placed.used,

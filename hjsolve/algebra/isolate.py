@@ -33,7 +33,7 @@ def isolate(k: Expr, value: Expr, x: Symbol, *, fractions: bool = False) -> Isol
         valid.extend(forgotten(k, value))
         step = _undo(k, value, x)
         if step is not None and step[0] == k:
-            step = _fraction(k, value, x) if half == 0 else None
+            step = linear_fraction(k, value, x) if half == 0 else None
         if step is None:
             return None
         inner, undone, both = step
@@ -79,7 +79,7 @@ def inverse_power(value: Expr, exponent: Rational) -> Expr:
     return value ** (1 / exponent)
 
 
-def _fraction(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:
+def linear_fraction(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:
     """The u and its value for (a + b u)/(c + d u) = value, u(x) being all that holds x."""
     above, below = sp.fraction(sp.together(k))
     functions = {f for e in (above, below) for f in _generators(e, x)}
@@ -110,6 +110,9 @@ def _undo(k: Expr, value: Expr, x: Symbol) -> tuple[Expr, Expr, bool] | None:
     if isinstance(k, Mul):
         factor, inner = k.as_independent(x, as_Add=False)
         return inner, spread(value, factor), False
+    if isinstance(k, Pow) and k.exp == 2 and isinstance(k.base, (sp.sin, sp.cos)):
+        double = 2 * value - 1 if isinstance(k.base, sp.cos) else 1 - 2 * value
+        return sp.cos(2 * k.base.args[0]), double, False
     if isinstance(k, Pow) and isinstance(k.exp, Rational):
         both = k.exp.p % 2 == 0 and not k.base.is_nonnegative
         return k.base, inverse_power(value, k.exp), both
@@ -134,6 +137,7 @@ INVERSES = {
     sp.acos: sp.cos,
     sp.acosh: sp.cosh,
     sp.acot: sp.cot,
+    sp.cot: lambda v: sp.pi / 2 - sp.atan(v),
 }
 """Functions with one inverse value (on their principal branch)."""
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
 
 import sympy as sp
 from sympy import Dummy, Expr, Symbol
@@ -22,21 +22,38 @@ def boundary_values(valid: Sequence[Relational]) -> dict[Symbol, Expr]:
 
 
 def regime(
-    valid: Sequence[Relational], keep: Symbol | None = None
+    valid: Sequence[Relational], keep: Collection[Symbol] = ()
 ) -> tuple[dict[Symbol, Expr], list[Relational]]:
-    """What a regime says of single symbols but ``keep``, and the conditions that are left.
+    """What a regime says of single symbols but those to ``keep``, and the conditions left.
 
     A symbol with a sign becomes a letter with that sign, one on a boundary the
-    value it has there.
+    value it has there.  A condition that fails is kept, as false.
     """
+    failed = [v for v in valid if v == sp.false]
     valid = [v for v in valid if v not in (sp.true, sp.false)]
     put: dict[Symbol, Expr] = dict(boundary_values(valid))
     for v in valid:
-        if keep in (v.lhs, v.rhs) or v.lhs in put or v.rhs in put:
+        if v.lhs in keep or v.rhs in keep or v.lhs in put or v.rhs in put:
             continue
         if v.lhs == 0 and v.rhs.is_Symbol and not v.rhs.is_positive:
             put[v.rhs] = Dummy(v.rhs.name, positive=True)
         elif v.rhs == 0 and v.lhs.is_Symbol and not v.lhs.is_negative:
             put[v.lhs] = -Dummy(v.lhs.name, positive=True)
-    left = [v.xreplace(put) for v in valid]
-    return put, [v for v in left if v not in (sp.true, sp.false)]
+    left = failed + [_put(v, put) for v in valid]
+    return put, [v for v in left if v != sp.true]
+
+
+def _put(relation: Relational, put: dict[Symbol, Expr]) -> Relational:
+    """The relation with values put in; false where one of its sides has none."""
+    try:
+        return relation.xreplace(put)
+    except TypeError:  # SymPy refuses to compare nan
+        return sp.false
+
+
+def has_value(e: Expr) -> Relational:
+    """A condition that holds wherever a formula has a real value.
+
+    The square of a path, in which its root is gone, may have one where it has not.
+    """
+    return sp.Lt(0, 2 + sp.atan(e), evaluate=False)

@@ -14,12 +14,12 @@ from collections.abc import Mapping
 import sympy as sp
 from sympy import Expr, Symbol
 
-from hjsolve.algebra.functions import jacobi_am, jacobi_dn
-from hjsolve.algebra.identity import Finding, refute, vanish
+from hjsolve.algebra.identity import Finding, vanish
 from hjsolve.algebra.named import Names
-from hjsolve.algebra.regimes import boundary_values, regime
+from hjsolve.algebra.regimes import boundary_values, has_value, regime
 from hjsolve.algebra.sampling import Range
-from hjsolve.records import Parametrisation, Separation, Truth
+from hjsolve.certification.along import vanish_along
+from hjsolve.records import Parametrisation, Separation
 
 
 def parametrised(
@@ -32,7 +32,8 @@ def parametrised(
     h, parameter = separation.hamiltonian, given.parameter
     formulas = (*given.coordinates, *given.momenta)
     pairs = tuple(zip(h.coordinates, h.momenta, strict=True))
-    known = {s: f.expression.xreplace(dict(branch)) for s, f in formulas}
+    known = {e.momentum: e.drift for e in separation.equations if e.root == 0}
+    known |= {s: f.expression.xreplace(dict(branch)) for s, f in formulas}
     rates = {s: f.expression for s, f in given.rates}
     needed = h.expression.free_symbols & set(h.coordinates)
     if h.time not in rates or not needed <= set(known):
@@ -81,34 +82,10 @@ def _along(
 ) -> list[Finding]:
     """Whether functions of λ vanish, for the constants of the regime."""
     valid = dict.fromkeys(v for _, f in given.coordinates for v in f.valid)
-    signs, conditions = regime(tuple(v.xreplace(dict(known)) for v in valid))
     where = tuple(dict.fromkeys(d for _, f in given.coordinates for d in f.where))
     names = Names(where) if where else None
-    positive = [c.rhs for c in conditions if c.lhs == 0]
+    kept = [d.symbol for d in where]
+    signs, conditions = regime(tuple(v.xreplace(dict(known)) for v in valid), kept)
+    conditions += [has_value(known[q].xreplace(signs)) for q, _ in given.coordinates]
     functions = separation.hamiltonian.functions
-    findings = []
-    for residue in (r.xreplace(signs) for r in residues):
-        short = residue.replace(_is_delta, _as_delta)
-        if short != residue:
-            seen = refute(residue, ranges, functions, 60, conditions, names=names)
-            if seen.truth is Truth.REFUTED or seen.bound is None:
-                findings.append(seen)
-                continue
-        findings += vanish([short], ranges, functions, 60, conditions, positive, names)
-    return findings
-
-
-def _is_delta(e: Expr) -> bool:
-    """Whether e is a power of √(1 − m sin² am(u, m)), which is dn(u, m) for m < 1."""
-    if not (isinstance(e, sp.Pow) and e.exp.is_Rational and e.exp.q == 2):
-        return False
-    found = e.base.atoms(jacobi_am)
-    if len(found) != 1:
-        return False
-    (am,) = found
-    return bool(sp.expand(e.base - 1 + am.args[1] * sp.sin(am) ** 2) == 0)
-
-
-def _as_delta(e: Expr) -> Expr:
-    (am,) = e.base.atoms(jacobi_am)
-    return jacobi_dn(*am.args) ** (2 * e.exp)
+    return vanish_along([r.xreplace(signs) for r in residues], ranges, functions, conditions, names)

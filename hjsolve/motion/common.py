@@ -17,16 +17,13 @@ from itertools import product
 
 import sympy as sp
 from sympy import Add, Dummy, Expr, Integral, Mul, Symbol
-from sympy.core.relational import Relational
 
 from hjsolve.algebra.calculus import derivative, is_formula
 from hjsolve.algebra.generators import NotRational
-from hjsolve.algebra.identity import refute
 from hjsolve.algebra.isolate import isolate
 from hjsolve.algebra.linear import constant_relations
-from hjsolve.algebra.named import Names
-from hjsolve.algebra.regimes import boundary_values, regime
-from hjsolve.motion.paths import Integrate, Path, along, paths, square, turns
+from hjsolve.algebra.regimes import boundary_values
+from hjsolve.motion.paths import Along, Integrate, Path, along, paths, square, turns
 from hjsolve.motion.smooth import smooth_antiderivative
 from hjsolve.records import (
     Definition,
@@ -34,7 +31,6 @@ from hjsolve.records import (
     Parametrisation,
     SeparatedEquation,
     Separation,
-    Truth,
 )
 
 MOST = 4
@@ -175,21 +171,9 @@ class _Parameter:
     def _met(self, chosen: Sequence[Path], tau: Symbol) -> bool:
         """Whether balls find constants for which all coordinates are real in these regimes."""
         moving = {e.coordinate: p.at for e, p in zip(self.equations, chosen, strict=True)}
-        valid = [v.xreplace(moving) for p in chosen for v in p.valid]
-        signs, conditions = regime(valid)
-        every = Add(*moving.values()).xreplace(signs)
+        valid = tuple(v for p in chosen for v in p.valid)
         where = tuple(dict.fromkeys(d for p in chosen for d in p.where))
-        around = {tau: (-sp.S.One, sp.S.One)}
-        found = refute(
-            Add(every, -every, evaluate=False),
-            around,
-            self.h.functions,
-            60,
-            conditions,
-            1,
-            Names(where) if where else None,
-        )
-        return found.bound is not None
+        return Along(tau, moving, valid, where, self.h.functions).met()
 
     def _written(
         self, choice: _Choice, along_paths: Sequence[Path], tau: Symbol
@@ -204,15 +188,15 @@ class _Parameter:
             phase = self.parameter if n == 0 else choice.total - self.parameter
             run = {tau: sign * phase}
             at = p.at.xreplace(run)
-            coordinates.append((e.coordinate, Formula(at, p.where, valid)))
+            coordinates.append((e.coordinate, Formula(at, where, valid)))
             momentum = along(e, p.at, tau, g, sign).xreplace(put).xreplace(run)
-            momenta.append((e.momentum, Formula(momentum, p.where, valid)))
+            momenta.append((e.momentum, Formula(momentum, where, valid)))
         moving = {q: f.expression for q, f in coordinates}
         laws, rates = [], []
-        context = _Regime(valid, where, put, moving)
+        context = Along(self.parameter, moving, valid, where, self.h.functions)
         for symbol, rate in self._rates(choice):
             law = self._law(symbol, rate.xreplace(put), context)
-            rates.append((symbol, Formula(rate.xreplace(put), (), valid)))
+            rates.append((symbol, Formula(rate.xreplace(put), where, valid)))
             laws.append((symbol, Formula(law[0], (*where, law[1]), valid)))
         every = [f.expression for _, f in (*coordinates, *momenta, *laws)]
         if self.h.time not in dict(laws) or not all(is_formula(f) for f in every):
@@ -248,37 +232,18 @@ class _Parameter:
             # Σ_i ∫ ∂p_i/∂α dq_i + ∂T/∂α = β, where ∂T/∂α is −t or φ
             yield (owners[a], -total) if a in owners else (self.h.time, total / -clock)
 
-    def _law(self, symbol: Symbol, rate: Expr, context: _Regime) -> tuple[Expr, Definition]:
+    def _law(self, symbol: Symbol, rate: Expr, context: Along) -> tuple[Expr, Definition]:
         """symbol(λ) = a constant plus ∫ rate dλ, in closed form where one runs on."""
         start = self._name(f"{symbol.name}_0")
-        running = rate.xreplace(context.moving)
+        running = context.unsquared(rate.xreplace(context.moving))
         smooth = smooth_antiderivative(running, self.parameter)
-        if smooth is not None and all(self._positive(e, context) for e in smooth.positive):
+        if smooth is not None and all(context.positive(e) for e in smooth.positive):
             change = smooth.expression
         else:
             inner = Dummy(self.parameter.name, real=True)
             change = Integral(running.xreplace({self.parameter: inner}), (inner, 0, self.parameter))
         words = f"constant of integration of {symbol.name}"
         return start + change, Definition(start, free=words)
-
-    def _positive(self, e: Expr, context: _Regime) -> bool:
-        """Whether an expression is positive at all points of the regime that are met."""
-        signs, conditions = regime([v.xreplace(context.moving) for v in context.valid])
-        around = {self.parameter: (-sp.S.One, sp.S.One)}
-        names = Names(context.where) if context.where else None
-        other = (sp.sign(e) - 1).xreplace(context.put).xreplace(signs)
-        found = refute(other, around, self.h.functions, 60, conditions, names=names)
-        return found.truth is not Truth.REFUTED and found.bound is not None
-
-
-@dataclass(frozen=True, slots=True)
-class _Regime:
-    """The conditions and names of a combination of regimes, and its motion."""
-
-    valid: tuple[Relational, ...]
-    where: tuple[Definition, ...]
-    put: dict[Symbol, Expr]
-    moving: dict[Symbol, Expr]
 
 
 def _compatible(chosen: Sequence[Path]) -> bool:
@@ -292,7 +257,7 @@ def first_kind(radicand: Expr, u: Expr, q: Symbol) -> Expr | None:
 
     With radicand (dq/du)² = K(u)² P(u) it is g = K (du/dq)².
     """
-    letter = Dummy("u", real=True)
+    letter = Dummy("u", positive=True) if u.is_positive else Dummy("u", real=True)
     inverse = isolate(u, letter, q)
     if inverse is None:
         return None

@@ -25,9 +25,10 @@ from hjsolve.algebra.identity import vanish
 from hjsolve.algebra.linear import constant_relations
 from hjsolve.algebra.regimes import boundary_values
 from hjsolve.algebra.roots import unify_roots
-from hjsolve.motion.paths import Integrate, Path, along, paths, square, turns
+from hjsolve.motion.paths import Along, Integrate, Path, along, paths, square, turns
 from hjsolve.motion.smooth import smooth_antiderivative
 from hjsolve.records import (
+    Definition,
     Formula,
     OtherRegime,
     SeparatedEquation,
@@ -167,6 +168,7 @@ class _Explicit:
             return
         total: Expr = self.phases[alpha]
         valid: list[Relational] = []
+        where: list[Definition] = []
         for other in self.s.equations:
             if other is e:
                 continue
@@ -184,9 +186,10 @@ class _Explicit:
             if None in parts:
                 return
             total -= Add(*parts)
-            needed = self.found.coordinates[leader.equation.coordinate].valid
-            valid += [v for v in needed if v not in valid]
-        self.found.coordinates[e.coordinate] = Formula(total, (), tuple(valid))
+            needed = self.found.coordinates[leader.equation.coordinate]
+            valid += [v for v in needed.valid if v not in valid]
+            where += [d for d in needed.where if d not in where]
+        self.found.coordinates[e.coordinate] = Formula(total, tuple(where), tuple(valid))
         self.found.momenta[e.momentum] = Formula(e.drift, (), tuple(valid))
 
     def _at(self, leader: Parametrised, rate: Expr) -> Expr | None:
@@ -201,21 +204,23 @@ class _Explicit:
     def _along(self, leader: Parametrised, above: Expr) -> Expr | None:
         """sign·∫ above/root dq as a function of time, through the turning points."""
         q = leader.equation.coordinate
-        rate = sp.expand((above / leader.speed).xreplace({q: leader.path.at}))
-        found = smooth_antiderivative(rate, leader.tau)
-        smooth = found.expression if found is not None and not found.positive else None
+        path, tau = leader.path, leader.tau
+        context = Along(tau, {q: path.at}, path.valid, path.where, self.h.functions)
+        rate = context.unsquared((above / leader.speed).xreplace({q: path.at}))
+        smooth = smooth_antiderivative(rate, tau)
+        if smooth is None or not all(context.positive(e) for e in smooth.positive):
+            return None
         anti = self.integrate(above / leader.equation.root, q, self.domain[q])
-        if smooth is None or not anti.closed_forms:
+        form = next((f for f in anti.closed_forms if set(f.valid) <= set(path.valid)), None)
+        if form is None or not set(form.where) <= set(path.where):
             return None
-        form = next((f for f in anti.closed_forms if set(f.valid) <= set(leader.path.valid)), None)
-        if form is None:
-            return None
-        start = form.expression.xreplace({q: leader.path.at}).subs(leader.tau, 0)
-        offset = sp.simplify(unify_roots(start - smooth.subs(leader.tau, 0)))
+        start = form.expression.xreplace({q: path.at}).subs(tau, 0)
+        offset = sp.simplify(unify_roots(start - smooth.expression.subs(tau, 0)))
         if offset.has(sp.nan, sp.zoo, sp.oo):
             return None
-        sign = leader.equation.sign if not turns(leader.path.at, leader.tau) else sp.S.One
-        return sign * (smooth + offset).xreplace({leader.tau: _oriented(sign, leader.phase)})
+        sign = leader.equation.sign if not turns(path.at, tau) else sp.S.One
+        whole = smooth.expression + offset
+        return sign * whole.xreplace({tau: _oriented(sign, leader.phase)})
 
 
 def _oriented(sign: Expr, phase: Expr) -> Expr:

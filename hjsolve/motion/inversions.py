@@ -16,7 +16,7 @@ from sympy.core.relational import Relational
 
 from hjsolve.algebra.functions import jacobi_am, jacobi_cn, jacobi_dn, jacobi_sn
 from hjsolve.algebra.identity import refute
-from hjsolve.algebra.isolate import isolate
+from hjsolve.algebra.isolate import Isolated, isolate, linear_fraction
 from hjsolve.algebra.named import Names
 from hjsolve.records import Domain, Truth
 
@@ -44,11 +44,7 @@ def _single(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     found = isolate(form, tau, q)
     if found is None:
         return ()
-    candidates = _about(found.centre, found.half)
-    if not found.centre.has(sp.pi):
-        return candidates
-    # the two values of the inverse sine, the one about 0 first
-    return tuple(sp.expand(c.replace(sp.acos, _through_asin)) for c in reversed(candidates))
+    return _values(found)
 
 
 def _through_asin(v: Expr) -> Expr:
@@ -68,6 +64,92 @@ def _root_of_quadratic(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     return _about(-b / (2 * a), sp.sqrt(sp.expand(inside / (4 * a**2))))
 
 
+def _squared(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
+    """Undo √R + c = τ for R linear fractional in one function of q, in e^{aq} too."""
+    rest, root = form.as_independent(q, as_Add=True)
+    letter = Dummy("w", positive=True)
+    inner, u = _in_exponential(root**2, q, letter)
+    value = (tau - rest) ** 2
+    if any(p.exp.is_Rational and p.exp.q != 1 and p.has(letter, q) for p in inner.atoms(sp.Pow)):
+        return ()
+    inner = sp.cancel(sp.together(inner))
+    if u is None:
+        found = isolate(inner, value, q, fractions=True)
+        return () if found is None else _about(found.centre, found.half)
+    found = isolate(inner, value, letter, fractions=True)
+    if found is None or found.half != 0 or inner.has(q):
+        return ()
+    outer = isolate(u, found.centre, q)
+    return () if outer is None else _about(outer.centre, outer.half)
+
+
+def _logarithms(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
+    """Undo c·log u − c·log v + d, with u/v linear fractional in one function of q."""
+    rest, moving = form.as_independent(q, as_Add=True)
+    ratio: Expr = sp.S.One
+    common: Expr | None = None
+    for term in Add.make_args(moving):
+        factor, log = term.as_independent(q, as_Add=False)
+        if not isinstance(log, sp.log):
+            return ()
+        common = common or factor
+        power = sp.cancel(factor / common)
+        if power not in (1, -1):
+            return ()
+        ratio *= log.args[0] ** power
+    if common is None:
+        return ()
+    # by e^w or by t = tanh(w/2), whichever is shorter
+    t, letter, w = Dummy("t", real=True), Dummy("v", positive=True), (tau - rest) / common
+    step = linear_fraction(sp.together(ratio), letter, q)
+    if step is None:
+        return ()
+    u, value, _ = step
+    by_tanh = sp.cancel(value.xreplace({letter: (1 + t) / (1 - t)}))
+    value = sp.cancel(value)
+    shorter = by_tanh.count_ops() < value.count_ops()
+    put = {t: sp.tanh(w / 2)} if shorter else {letter: sp.exp(w)}
+    found = isolate(u, (by_tanh if shorter else value).xreplace(put), q)
+    return () if found is None else _values(found)
+
+
+def _values(found: Isolated) -> tuple[Expr, ...]:
+    """The one or two values; of an inverse sine the one about 0 first."""
+    candidates = _about(found.centre, found.half)
+    if not found.centre.has(sp.pi):
+        return candidates
+    return tuple(sp.expand(c.replace(sp.acos, _through_asin)) for c in reversed(candidates))
+
+
+def _in_exponential(e: Expr, q: Symbol, letter: Symbol) -> tuple[Expr, Expr | None]:
+    """The exponentials in e as powers of one of them, and that one."""
+    found = sorted((f for f in e.atoms(sp.exp) if f.has(q)), key=sp.default_sort_key)
+    if not found:
+        return e, None
+    powers = {f: sp.cancel(f.args[0] / found[0].args[0]) for f in found}
+    if not all(n.is_Integer for n in powers.values()):
+        return e, None
+    return e.xreplace({f: letter**n for f, n in powers.items()}), found[0]
+
+
+def _cubic_in_a_root(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
+    """(A q + B)√(a + b q) + c = τ: a cubic s³ + P s = T in the root s, solved for P > 0."""
+    rest, moving = form.as_independent(q, as_Add=True)
+    roots = {p for p in moving.atoms(sp.Pow) if p.exp == sp.Rational(1, 2) and p.has(q)}
+    if len(roots) != 1:
+        return ()
+    (root,) = roots
+    factor = sp.cancel(moving / root)
+    if not all(e.is_polynomial(q) and sp.degree(e, q) == 1 for e in (factor, root.base)):
+        return ()
+    (B, A), (a, b) = (
+        [sp.Poly(e, q).coeff_monomial(q**n) for n in (0, 1)] for e in (factor, root.base)
+    )
+    p, t = sp.cancel(B * b / A - a), b * (tau - rest) / A
+    s = 2 * sp.sqrt(p / 3) * sp.sinh(sp.asinh(3 * t * sp.sqrt(3 / p) / (2 * p)) / 3)
+    return ((s**2 - a) / b,)
+
+
 def _jacobi(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     """c·F(φ(q), m) + d = τ: φ = am((τ − d)/c, m)."""
     integrals = [f for f in form.atoms(sp.elliptic_f) if f.has(q)]
@@ -83,14 +165,7 @@ def _jacobi(form: Expr, q: Symbol, tau: Symbol) -> tuple[Expr, ...]:
     inner = isolate(phi, amplitude, q, fractions=True)
     if inner is None:
         return ()
-    found: list[Expr] = []
-    for e in _about(inner.centre, inner.half):
-        if inner.centre.has(sp.pi):
-            # asin v before π − asin v
-            found.insert(0, sp.expand(e.replace(sp.acos, _through_asin)))
-        else:
-            found.append(e)
-    return tuple(_in_jacobi(e, amplitude, outer.centre, m) for e in found)
+    return tuple(_in_jacobi(e, amplitude, outer.centre, m) for e in _values(inner))
 
 
 def _in_jacobi(path: Expr, amplitude: Symbol, u: Expr, m: Expr) -> Expr:
@@ -156,6 +231,24 @@ INVERSIONS = (
             ("elliptic_f(q/2, k)", "2*jacobi_am(tau, k)"),
             ("-elliptic_f(acos(q), k)", "jacobi_cn(tau, k)"),
         ),
+    ),
+    Inversion(
+        "logarithms",
+        "elementary algebra",
+        _logarithms,
+        (("log(1 + sin(q)) - log(1 - sin(q))", "asin(tanh(tau/2))"),),
+    ),
+    Inversion(
+        "square-of-a-root",
+        "elementary algebra",
+        _squared,
+        (("sqrt(2*exp(-q) - exp(-2*q))*exp(q)", "log((tau**2 + 1)/2)"),),
+    ),
+    Inversion(
+        "cubic-in-a-root",
+        "Barker's equation; the cubic by hyperbolic functions (Holmes 2002; from memory)",
+        _cubic_in_a_root,
+        (("(q + 2)*sqrt(q - 1)", "4*sinh(asinh(tau/2)/3)**2 + 1"),),
     ),
     Inversion(
         "root-of-a-quadratic",
@@ -228,7 +321,7 @@ def returns(
     residue = form.xreplace({q: path}) - tau
     found = []
     for side in (sp.S.One, sp.S.NegativeOne):
-        ends = sorted((side / 50, side / 5))
+        ends = sorted((side / 90, side / 25))
         finding = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions, names=names)
         found.append(finding.truth is Truth.UNDECIDED and finding.bound is not None)
     return found[0], found[1]

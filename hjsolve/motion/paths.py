@@ -11,9 +11,9 @@ from sympy.core.relational import Relational
 
 from hjsolve.algebra.calculus import derivative, is_formula
 from hjsolve.algebra.functions import jacobi_cn, jacobi_dn, jacobi_sn
-from hjsolve.algebra.identity import refute
+from hjsolve.algebra.identity import Finding, refute
 from hjsolve.algebra.named import Names
-from hjsolve.algebra.regimes import boundary_values
+from hjsolve.algebra.regimes import boundary_values, has_value, regime
 from hjsolve.motion.inversions import invert, returns
 from hjsolve.records import Antiderivative, Definition, Domain, SeparatedEquation, Truth
 
@@ -54,6 +54,52 @@ def paths(
 
 
 @dataclass(frozen=True, slots=True)
+class Along:
+    """The coordinates as functions of a parameter, in one regime."""
+
+    parameter: Symbol
+    moving: dict[Symbol, Expr]
+    valid: tuple[Relational, ...]
+    where: tuple[Definition, ...]
+    functions: Collection[str]
+
+    def positive(self, e: Expr) -> bool:
+        """Whether an expression is positive at all points of the regime that are met."""
+        found = self._sample(sp.sign(e) - 1)
+        return found.truth is not Truth.REFUTED and found.bound is not None
+
+    def unsquared(self, e: Expr) -> Expr:
+        """√(x²) as x or −x where x keeps its sign."""
+        put = {}
+        for power in e.atoms(sp.Pow):
+            inner = power.base
+            if power.exp == sp.Rational(1, 2) and isinstance(inner, sp.Pow) and inner.exp == 2:
+                sign = next((s for s in (1, -1) if self.positive(s * inner.base)), 0)
+                if sign:
+                    put[power] = sign * inner.base
+        return e.xreplace(put)
+
+    def _sample(self, e: Expr) -> Finding:
+        """Balls of an expression at points of the regime where all coordinates are real."""
+        names = Names(self.where) if self.where else None
+        kept = names.symbols if names is not None else ()
+        signs, conditions = regime([v.xreplace(self.moving) for v in self.valid], kept)
+        conditions += [has_value(path.xreplace(signs)) for path in self.moving.values()]
+        return refute(
+            e.xreplace(boundary_values(self.valid)).xreplace(signs),
+            {self.parameter: (-sp.S.One, sp.S.One)},
+            self.functions,
+            60,
+            conditions,
+            names=names,
+        )
+
+    def met(self) -> bool:
+        """Whether there are constants for which all coordinates are real in the regime."""
+        return self._sample(sp.S.Zero).bound is not None
+
+
+@dataclass(frozen=True, slots=True)
 class _Case:
     """A closed form that is to be inverted, in its regime."""
 
@@ -75,6 +121,7 @@ class _Case:
         conditions = [v.xreplace({q: path}) for v in self.valid if v.rel_op in ("<", ">")]
         momentum = e.drift if e.root == 0 else (self.speed * slope) ** 2 - e.root**2
         residue = momentum.xreplace(boundary_values(self.valid)).xreplace({q: path})
+        conditions.append(has_value(path))
         if e.root == 0:  # only whether it has a real value
             residue = Add(residue, -residue, evaluate=False)
         around = {self.tau: (-sp.S.One, sp.S.One)}

@@ -22,7 +22,6 @@ def integrate(problem: Problem) -> Outcome | None:
     """Explicit roots where P is even, else named ones."""
     if not rooted(problem.integrand, problem.variable):
         return None
-    readings = _readings(problem)
     outcome = None
     with contextlib.suppress(GivenUp):
         outcome = algebraic(
@@ -30,11 +29,11 @@ def integrate(problem: Problem) -> Outcome | None:
             even.cost,
             even.formula,
             even.terms,
-            readings=readings,
+            read=_readings,
             restricted=RESTRICTED,
         )
     if outcome is None:
-        return ordered.integrate(problem, readings)
+        return ordered.integrate(problem, _readings(problem))
     return Outcome(tuple(_freed(problem, f) for f in outcome.formulas), outcome.substitution)
 
 

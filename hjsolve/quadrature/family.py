@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 from typing import Literal
 
 from sympy import Expr, Le
@@ -25,6 +26,10 @@ READINGS_TRIED = 2
 
 BOUNDARIES = 2
 """Regimes of equality (zero energy, threshold) worked out for one integral."""
+
+
+RESTRICTED = 10.0
+"""The cost of a condition on the variable."""
 
 
 @dataclass(frozen=True)
@@ -72,17 +77,15 @@ def algebraic(
     terms: Callable[[Reduction], int],
     *,
     boundaries: bool = True,
-    readings: list[Reading] | None = None,
-    restricted: float = 10.0,
+    read: Callable[[Problem], list[Reading]] = Problem.readings,
+    restricted: float = RESTRICTED,
 ) -> Outcome | None:
     """The checked formulas in the cheapest kernel in which every piece has one.
 
-    ``readings`` are those to choose from, all of the problem's when None;
-    ``restricted`` is the cost of a condition on the variable.
+    ``read`` gives the readings to choose from; ``restricted`` is the cost of a
+    condition on the variable.
     """
-    if readings is None:
-        readings = problem.readings()
-    priced = [(r.cost(cost, restricted), i, r) for i, r in enumerate(readings)]
+    priced = [(r.cost(cost, restricted), i, r) for i, r in enumerate(read(problem))]
     ranked = sorted((c, i, r) for c, i, r in priced if c < float("inf"))
     reason: GivenUp | None = None
     if ranked:
@@ -95,8 +98,17 @@ def algebraic(
             continue
         if found:
             if boundaries:
+                again = partial(
+                    algebraic,
+                    cost=cost,
+                    formula=formula,
+                    terms=terms,
+                    boundaries=False,
+                    read=read,
+                    restricted=restricted if problem.domain.kind == "angle" else RESTRICTED,
+                )
                 for border in borders[:BOUNDARIES]:
-                    found += _on(problem, reading, border, cost, formula, terms)
+                    found += _on(problem, reading, border, again)
             return Outcome(tuple(found), reading.pieces[0].kernel.expression)
     if reason is not None:
         raise reason
@@ -144,9 +156,7 @@ def _on(
     problem: Problem,
     reading: Reading,
     border: Assumption,
-    cost: Callable[[Reduction, Signs], float],
-    formula: PieceFormula,
-    terms: Callable[[Reduction], int],
+    integrate: Callable[[Problem], Outcome | None],
 ) -> list[Formula]:
     """The formulas where a sign that tells regimes apart is zero; none when not simple."""
     solved = boundary(reading, border)
@@ -156,9 +166,8 @@ def _on(
     integrand = problem.integrand.subs(symbol, value)
     if not integrand.has(problem.variable):
         return []
-    special = Problem(integrand, problem.variable, problem.domain, problem.deadline)
     try:
-        outcome = algebraic(special, cost, formula, terms, boundaries=False)
+        outcome = integrate(Problem(integrand, problem.variable, problem.domain, problem.deadline))
     except GivenUp:
         return []
     if outcome is None:

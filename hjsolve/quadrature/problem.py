@@ -13,7 +13,8 @@ from dataclasses import dataclass, field, replace
 from math import gcd
 from typing import Any
 
-from sympy import Expr, Pow, Rational, S, Symbol, oo
+from sympy import Expr, Pow, Rational, S, Symbol, oo, pi
+from sympy.core.relational import Relational
 
 from hjsolve.errors import OutOfTime
 from hjsolve.quadrature.kernel import Kernel
@@ -26,6 +27,10 @@ from hjsolve.records import Domain
 
 SIZE_LIMIT = 3_000
 """An integrand with more subexpressions is given up before anything walks through it."""
+
+
+HALF_TURN = 2.0
+"""The cost of a kernel that an angle runs out of before it has turned once."""
 
 
 @dataclass(frozen=True)
@@ -149,13 +154,29 @@ class Reading:
 
         A kernel that holds on a part of the domain only, or whose roots have a
         sign nobody knows, comes after all that need neither; ``restricted`` is
-        added for each end of such a part.
+        added for each end of such a part, and HALF_TURN for a part of an angle
+        that is less than a whole turn.
         """
         total = restricted * len(self.kernel.restriction) + (0.0 if self.exact else 5.0)
+        total += HALF_TURN * self._within_a_turn()
         for piece in self.pieces:
             signs = self.signs(kernel=piece.kernel, guess=True)
             total += piece_cost(piece.reduction, signs)
         return total
+
+    def _within_a_turn(self) -> bool:
+        """Whether the kernel is restricted to less than a whole turn of an angle."""
+        restriction, q = self.kernel.restriction, self.problem.variable
+        if self.problem.domain.kind != "angle" or not restriction:
+            return False
+        ends = [side / (other / q) for r in restriction for side, other in _sides(r, q)]
+        return len(ends) == 2 and bool(abs(ends[1] - ends[0]) < 2 * pi)
+
+
+def _sides(relation: Relational, q: Symbol) -> list[tuple[Expr, Expr]]:
+    """(the number, the multiple of q) of a bound on q."""
+    pairs = ((relation.lhs, relation.rhs), (relation.rhs, relation.lhs))
+    return [(a, b) for a, b in pairs if a.is_number and (b / q).is_number]
 
 
 def _pulled(signs: Signs, radicand: Any) -> tuple[Any, Any]:

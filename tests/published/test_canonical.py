@@ -35,9 +35,7 @@ def answer(row: dict[str, Any]) -> dict[str, Any]:
     return _answers[row["id"]]
 
 
-def points(
-    row: dict[str, Any], found: dict[str, Any], count: int = POINTS
-) -> list[dict[str, Any]]:
+def points(row: dict[str, Any], found: dict[str, Any], count: int = POINTS) -> list[dict[str, Any]]:
     """Old and new variables that belong together, by the expected map, else by the answer's."""
     expected = row["expect"].get("old_in_new", {})
     made = []
