@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import argparse
 import json
+import signal
 import subprocess
 import sys
 import time
@@ -27,26 +28,33 @@ HERE = Path(__file__).parent
 METHODS = ("pdsolve", "peel", "cleared")
 KINDS = ("complete", "partial", "none")
 
+PATIENCE = 10
+"""How many times the limit a process may take by the clock."""
+
 
 def asked(task: dict[str, Any], seconds: float) -> dict[str, Any]:
     """The answer of sympy_worker.py in a process that is killed when it takes longer.
 
+    The limit is one of processor time, so that a busy machine is not held against it.
     A time-out or a crash is an "error" too; a time-out counts as the limit.
     """
+    late = {"error": "time-out", "seconds": seconds, "processor": seconds}
     try:
         run = subprocess.run(
             [sys.executable, str(HERE / "sympy_worker.py")],
-            input=json.dumps(task),
+            input=json.dumps({**task, "limit": seconds}),
             capture_output=True,
             text=True,
-            timeout=seconds + 5,
+            timeout=PATIENCE * seconds + 5,
             check=True,
             cwd=HERE.parent.parent,
             env={"PYTHONPATH": str(HERE.parent.parent), "PATH": ""},
         )
     except subprocess.TimeoutExpired:
-        return {"error": "time-out", "seconds": seconds, "processor": seconds}
-    except subprocess.CalledProcessError:
+        return late
+    except subprocess.CalledProcessError as error:
+        if error.returncode == -signal.SIGXCPU:
+            return late
         return {"error": "crash", "seconds": 0.0, "processor": 0.0}
     answer: dict[str, Any] = json.loads(run.stdout)
     return answer

@@ -9,6 +9,8 @@ from a finished expression.  ``integrate``: an antiderivative, of which only the
 from __future__ import annotations
 
 import json
+import math
+import resource
 import sys
 import time
 from collections.abc import Callable
@@ -80,7 +82,10 @@ def prepared(task: dict[str, Any]) -> Callable[[], dict[str, Any]]:
 
 def main() -> None:
     """Read a task with its method, write its answer or {"error"}, and the time it took."""
-    work = prepared(json.load(sys.stdin))
+    task = json.load(sys.stdin)
+    work = prepared(task)
+    most = math.ceil(time.process_time() + task["limit"])
+    resource.setrlimit(resource.RLIMIT_CPU, (most, most + 1))
     clock, processor = time.perf_counter(), time.process_time()
     try:
         answer = work()
