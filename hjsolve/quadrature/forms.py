@@ -25,8 +25,15 @@ from hjsolve.quadrature.points import floats
 from hjsolve.quadrature.problem import Piece
 from hjsolve.records import Definition
 
-NAMED = 6
-"""Operations of a constant above which it gets a name instead of being repeated."""
+NAMED = {"m": 6, "n": 6, "k": 2, "t": 2, "c": 8}
+"""Operations of a constant above which it gets a name instead of being repeated.
+
+The constants k and t of a Legendre integral occur in many places, m and n in few;
+c are coefficients that several functions share.
+"""
+
+SHORT = 5
+"""Operations up to which the imaginary part of a root gets no name."""
 
 
 def _value(mark: Mark) -> float:
@@ -140,10 +147,10 @@ class Form:
                 whole.pole(n0, at, self._inside(at))
                 continue
             b, c = (dress.ratio(x) if x else S.Zero for x in (pole.factor[1], pole.factor[0]))
-            gap = sqrt(b**2 - 4 * c)
+            half = sqrt((b / 2) ** 2 - c)
             for sign in (1, -1):
-                at = (-b + sign * gap) / 2
-                whole.pole((n0 + n1 * at) * sign / gap, at, self._inside(at))
+                at = sign * half - b / 2
+                whole.pole((n0 + n1 * at) / (2 * sign * half), at, self._inside(at))
         return total + whole.expression(), self.definitions
 
     def _inside(self, at: Expr) -> bool | None:
@@ -174,7 +181,7 @@ class Form:
 
     def _short(self, stem: str, value: Expr) -> Expr:
         """A long constant by a name: n1, n2, … or k1, k2, …."""
-        if value.count_ops() <= NAMED or value.is_Symbol:
+        if value.count_ops() <= NAMED[stem] or value.is_Symbol:
             return value
         count = sum(1 for d in self.definitions if d.symbol.name.startswith(f"{self.stem}_{stem}"))
         return self._name(f"{stem}{count + 1}", value, positive=False)
@@ -278,6 +285,7 @@ class Form:
         (pair,) = self.layout.pairs
         reals = self.layout.reals
         b, a2 = self._named(pair, "")
+        a2 = self._positive("sq", a2)
         outer = self._outer()
         if self.degree == 3:
             e: Mark = reals[0]
@@ -302,22 +310,25 @@ class Form:
                 side / sqrt(size * a_e),
                 "cosine",
                 (x + side * a_e, x - side * a_e, S.One, S.One),
-                2 * sqrt(a_e * near) / below,
-                (a_e - near) / below,
-                quadratic_ / below,
+                2 * sqrt(a_e * near),
+                a_e - near,
+                quadratic_,
+                below,
             )
         y = f.expression
         a_f = self._name("d2", sqrt((b - y) ** 2 + a2))
         far = u - y if self.place > f.value else y - u
         span = y - x if f.value > e.value else x - y
         below = a_e * far + a_f * near
+        square = self._name("d", a_e * a_f)
+        mean = sqrt(square)
         side = 1 if self.place > e.value else -1
         turn = -1 if outer else 1
         m = ((a_e + a_f) ** 2 - span**2) if outer else (span**2 - (a_e - a_f) ** 2)
         return Normal(
             acos((a_e * far - a_f * near) / below),
-            m / (4 * a_e * a_f),
-            side / sqrt(size * a_e * a_f),
+            m / (4 * square),
+            side / (sqrt(size) * mean),
             "cosine",
             (
                 a_f * x + turn * a_e * y,
@@ -325,22 +336,26 @@ class Form:
                 a_f + turn * a_e,
                 a_f - turn * a_e,
             ),
-            2 * sqrt(a_e * a_f * near * far) / below,
-            (a_e * far - a_f * near) / below,
-            span * quadratic_ / below,
-            passes=outer,
+            2 * mean * sqrt(near * far),
+            a_e * far - a_f * near,
+            span * quadratic_,
+            below,
+            outer,
         )
 
     def _named(self, pair: Pair, tail: str) -> tuple[Expr, Expr]:
-        """(b, a²) of a pair, as names where they are long."""
+        """(b, a²) of a pair, b as a name where it is long."""
         b, a2 = pair.real, pair.square
         if b.count_ops() > 3:
             symbol = Symbol(f"{self.stem}_re{tail}", real=True)
             self.definitions.append(Definition(symbol, definition=b))
+            a2 = a2.xreplace({2 * b: 2 * symbol})
             b = symbol
-        if a2.count_ops() > 3:
-            a2 = self._name(f"im{tail}", sqrt(pair.square)) ** 2
         return b, a2
+
+    def _positive(self, tail: str, value: Expr) -> Expr:
+        """A positive constant, by a name where it is long."""
+        return value if value.count_ops() <= SHORT else self._name(tail, value)
 
     # --------------------------------------------------------- two pairs
 
@@ -348,7 +363,7 @@ class Form:
         first, second = self.layout.pairs
         b1, a1 = self._named(first, "1")
         b2, a2 = self._named(second, "2")
-        a1, a2 = sqrt(a1), sqrt(a2)
+        a1, a2 = self._positive("im1", sqrt(a1)), self._positive("im2", sqrt(a2))
         u = self.u
         more = self._name("d1", sqrt((b1 - b2) ** 2 + (a1 + a2) ** 2))
         less = self._name("d2", sqrt((b1 - b2) ** 2 + (a1 - a2) ** 2))
@@ -357,8 +372,8 @@ class Form:
         )
         m = 4 * more * less / (more + less) ** 2
         y = (u - b1) / a1
-        length = sqrt((1 + y**2) * (1 + shift**2))
-        sine, cosine = (y - shift) / length, (1 + shift * y) / length
+        sine, cosine = y - shift, 1 + shift * y
+        below = sqrt((1 + y**2) * (1 + shift**2))
         return Normal(
             atan(y) - atan(shift),
             m,
@@ -367,5 +382,6 @@ class Form:
             (b1 + a1 * shift, a1 - b1 * shift, S.One, -shift),
             sine,
             cosine,
-            sqrt(1 - m * sine**2),
+            sqrt(below**2 - m * sine**2),
+            below,
         )

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Literal
 
 import sympy as sp
@@ -23,14 +24,18 @@ ONE = S.One
 TIDIED = 40
 """Operations of a coefficient above which no shorter way to write it is looked for."""
 
+MANY = 4
+"""Terms up to which each has its own factor g, which may cancel against others of it."""
+
 
 @dataclass(frozen=True)
 class Normal:
     """φ(u), m, g and the meaning of z.
 
-    ``sine``, ``cosine``, ``delta`` are sin φ, cos φ, Δ as algebraic functions of
-    u.  ``moebius`` is (A, B, C, D).  ``passes`` says whether φ may lie on both
-    sides of the mirror image of a pole, where Π(n) with n > 1 is not used.
+    ``sine``, ``cosine``, ``delta`` are ``below`` times sin φ, cos φ, Δ, all
+    algebraic functions of u.  ``moebius`` is (A, B, C, D).  ``passes`` says whether
+    φ may lie on both sides of the mirror image of a pole, where Π(n) with n > 1 is
+    not used.
     """
 
     phi: Expr
@@ -41,6 +46,7 @@ class Normal:
     sine: Expr
     cosine: Expr
     delta: Expr
+    below: Expr = ONE
     passes: bool = False
 
 
@@ -60,13 +66,12 @@ class Sum:
             self.terms.setdefault(function, []).append(coefficient)
 
     def expression(self) -> Expr:
-        """The sum times g."""
+        """The sum times g, in one bracket where there are many terms."""
         g = self.normal.weight
-        total = []
-        for function, coefficients in self.terms.items():
-            c = _tidy(Add(*coefficients))
-            total.append(Mul(g, c, function))
-        return Add(*total)
+        total = [(_tidy(Add(*c)), function) for function, c in self.terms.items()]
+        if len(total) > MANY:
+            return Mul(g, Add(*(Mul(*term) for term in total)))
+        return Add(*(Mul(g, *term) for term in total))
 
     # ----------------------------------------------------------- the tables
 
@@ -81,19 +86,20 @@ class Sum:
             self._z(w1 * b / c)
             return
         at = b / d
-        self.add(w0 + w1 * at + w2 * at**2, self._f())
+        self.add(w0 + at * (w1 + w2 * at), self._f())
         slope = w1 + 2 * w2 * at
         if c == 0:
             if w2 != 0:
                 raise GivenUp("a square of w with a pole at z = 0")
             self._inverse_z(slope * a / d)
             return
-        jump = (a * d - b * c) / (c * d)
+        jump = -self._determinant / (c * d)
         kappa = -d / c
-        if slope != 0 or w2 != 0:
-            self._first(slope * jump, kappa)
         if w2 != 0:
-            self._second(w2 * jump**2, kappa)
+            jump, kappa = self.name("c", jump), self.name("k", kappa)
+            self._second(w2 * jump**2, kappa, slope * jump)
+        elif slope != 0:
+            self._first(slope * jump, kappa)
 
     def pole(self, residue: Expr, at: Expr, inside: bool | None = None) -> None:
         """Add ∫ residue/(w − at) dφ/Δ.
@@ -106,12 +112,22 @@ class Sum:
             self.add(residue * c / alpha, self._f())
             self._z(residue * d / alpha)
             return
-        self.add(residue * d / beta, self._f())
-        det = b * c - a * d
+        residue = self.name("c", residue)
         if alpha == 0:
+            self.add(residue * d / beta, self._f())
             self._inverse_z(residue * (c / beta))
             return
-        self._first(residue * det / (alpha * beta), -beta / alpha, inside)
+        nu = -beta / alpha
+        if self.normal.kind != "square":
+            nu = self.name("k", _tidy(nu))
+            beta = -nu * alpha
+        self.add(residue * d / beta, self._f())
+        self._first(residue * self._determinant / (alpha * beta), nu, inside)
+
+    @cached_property
+    def _determinant(self) -> Expr:
+        a, b, c, d = self.normal.moebius
+        return _tidy(b * c - a * d)
 
     def _f(self) -> Expr:
         return elliptic_f(self.normal.phi, self.normal.m, evaluate=False)
@@ -128,7 +144,7 @@ class Sum:
             self.add(k / n.m, self._f())
             self.add(-k / n.m, self._e())
         elif n.kind == "cosine":
-            self.add(k / sqrt(n.m), sp.asin(sqrt(n.m) * n.sine))
+            self.add(k / sqrt(n.m), sp.asin(sqrt(n.m) * n.sine / n.below))
         else:
             raise GivenUp("an integral of tan φ")
 
@@ -139,7 +155,7 @@ class Sum:
             raise GivenUp("a pole at z = 0")
         self.add(k, self._f())
         self.add(-k, self._e())
-        self.add(-k * n.cosine * n.delta / n.sine)
+        self.add(-k * n.cosine * n.delta / (n.sine * n.below))
 
     def _first(self, k: Expr, nu: Expr, inside: bool | None = None) -> None:
         """K ∫ dφ/((1 − νz)Δ)."""
@@ -149,15 +165,15 @@ class Sum:
             self.add(k, self._f())
         elif n.kind == "square":
             if inside:
-                self._third(k, nu, True)
+                self._above(k, nu)
                 return
             if _equal(nu, ONE):
                 self.add(k, self._f())
-                self.add(k / (1 - n.m) * n.sine * n.delta / n.cosine)
+                self.add(k / (1 - n.m) * n.sine * n.delta / (n.cosine * n.below))
                 self.add(-k / (1 - n.m), self._e())
             elif _equal(nu, n.m):
                 self.add(k / (1 - n.m), self._e())
-                self.add(-k / (1 - n.m) * n.m * n.sine * n.cosine / n.delta)
+                self.add(-k / (1 - n.m) * n.m * n.sine * n.cosine / (n.delta * n.below))
             else:
                 self.add(k, elliptic_pi(self.name("n", nu), n.phi, n.m, evaluate=False))
         elif n.kind == "cosine":
@@ -170,78 +186,82 @@ class Sum:
         if _equal(nu, ONE) or _equal(nu, -ONE):
             self.add(k, self._f())
             self.add(-k, self._e())
-            half = n.sine / (1 + n.cosine)
-            self.add(-k * n.delta / half if _equal(nu, ONE) else k * n.delta * half)
+            half, delta = n.sine / (n.below + n.cosine), n.delta / n.below
+            self.add(-k * delta / half if _equal(nu, ONE) else k * delta * half)
             return
         nu = self.name("k", nu)
-        third = nu**2 / (nu**2 - 1)
-        front = k / (1 - nu**2)
-        if inside is None:
-            inside = n.passes
-        self._third(front, third, inside)
-        if inside:
-            root = sqrt(nu**2 / (nu**2 - 1) - n.m)
-            ratio = (n.delta + root * n.sine) / (n.delta - root * n.sine)
-            self.add(front * nu / (2 * root), log(Abs(ratio, evaluate=False)))
+        third = self.name("t", nu**2 / (nu**2 - 1))
+        front = self.name("c", k * (1 - third))
+        if n.passes if inside is None else inside:
+            # both logarithms, of Π(third) and of its own, in one
+            root = sqrt(third - n.m)
+            self._reflected(front, third)
+            up = third * n.below * (n.below - n.cosine / nu) - n.m * n.sine**2
+            down = root * n.sine * n.delta
+            self.add(front * nu / (2 * root), log(Abs((up + down) / (up - down), evaluate=False)))
         else:
-            root = sqrt(n.m + nu**2 / (1 - nu**2))
+            root = sqrt(n.m - third)
+            self.add(front, elliptic_pi(third, n.phi, n.m, evaluate=False))
             self.add(front * nu / root, atan(root * n.sine / n.delta))
 
     def _tangent(self, k: Expr, nu: Expr) -> None:
-        """K ∫ dφ/((1 + ν tan φ)Δ)."""
+        """K ∫ dφ/((1 + ν tan φ)Δ), the two logarithms in one."""
         n = self.normal
         nu = self.name("k", nu)
         third = 1 + nu**2
         self.add(k / third, self._f())
-        self._third(k * nu**2 / third, third, True)
-        up, down = sqrt(third) * n.delta, sqrt(third - n.m)
-        self.add(
-            k * nu / (2 * sqrt(third * (third - n.m))),
-            log(Abs((up - down) / (up + down), evaluate=False)),
-        )
+        self._reflected(k * nu**2 / third, third)
+        root = sqrt(third * (third - n.m))
+        up = third * n.below**2 - n.m * n.sine * (n.sine - nu * n.cosine)
+        down = root * n.delta * n.below
+        self.add(k * nu / (2 * root), log(Abs((up - down) / (up + down), evaluate=False)))
 
-    def _third(self, k: Expr, third: Expr, above: bool) -> None:
-        """K Π(third, φ, m); ``above`` says whether third > 1."""
+    def _reflected(self, k: Expr, third: Expr) -> None:
+        """K Π(third, φ, m) for third > 1, but for its logarithm."""
         n = self.normal
-        if not above:
-            self.add(k, elliptic_pi(third, n.phi, n.m, evaluate=False))
-            return
+        k = self.name("c", k)
         self.add(k, self._f())
         self.add(-k, elliptic_pi(n.m / third, n.phi, n.m, evaluate=False))
+
+    def _above(self, k: Expr, third: Expr) -> None:
+        """K Π(third, φ, m) for third > 1."""
+        n = self.normal
+        k = self.name("c", k)
+        self._reflected(k, third)
         root = sqrt((third - 1) * (third - n.m) / third)
-        up, down = n.cosine * n.delta, root * n.sine
+        up, down = n.cosine * n.delta, root * n.sine * n.below
         self.add(-k / (2 * root), log(Abs((up - down) / (up + down), evaluate=False)))
 
-    def _second(self, k: Expr, nu: Expr) -> None:
-        """K ∫ dφ/((1 − νz)² Δ)."""
+    def _second(self, k: Expr, nu: Expr, first: Expr) -> None:
+        """∫ (K/(1 − νz)² + first/(1 − νz)) dφ/Δ."""
         n = self.normal
-        nu = self.name("n" if n.kind == "square" else "k", nu)
         if n.kind == "square":
-            self._second_square(k, nu)
+            self._second_square(k, nu, first)
         elif n.kind == "cosine":
-            x0 = (nu**2 - 1) * (nu**2 * n.m - nu**2 - n.m) / nu**3
-            x1 = (2 * nu**2 * n.m - nu**2 - 2 * n.m) / nu**3
-            self.add(k / x0 * n.sine * n.delta / (1 - nu * n.cosine))
-            self._first(-k * x1 / x0, nu)
-            self.add(-k / x0 * (n.m + nu**2 * (1 - n.m)) / nu**3, self._f())
-            self.add(k / (x0 * nu), self._e())
+            third = self.name("t", nu**2 / (nu**2 - 1))
+            front = self.name("c", k * third**2 / (nu**2 * (n.m - third)))
+            self.add(front * nu * n.sine * n.delta / (n.below * (n.below - nu * n.cosine)))
+            self._first(first - front * (2 * n.m - third) / third, nu)
+            self.add(front * (n.m - third) / third, self._f())
+            self.add(front, self._e())
         else:
-            t, rest = -nu, 1 - n.m
-            x0 = -(rest + t**2) * (t**2 + 1) / t**3
-            x1 = (rest * t**2 + 2 * rest + t**2) / t**3
-            ratio = (t * n.cosine - n.sine) / (t * (n.cosine + t * n.sine))
-            self.add(k / x0 * n.delta * ratio)
-            self._first(-k * x1 / x0, nu)
-            self.add(k / (x0 * t), self._e())
-            self.add(k * rest / (x0 * t**3), self._f())
+            nu = -nu
+            third = 1 + nu**2
+            front = self.name("c", k * nu**2 / (third * (third - n.m)))
+            ratio = (n.sine - nu * n.cosine) / (n.cosine + nu * n.sine)
+            self.add(front * n.delta * ratio / n.below)
+            self._first(first + front * (2 * third - n.m * (third + 1)) / nu**2, -nu)
+            self.add(-front, self._e())
+            self.add(front * (n.m - 1) / nu**2, self._f())
 
-    def _second_square(self, k: Expr, nu: Expr) -> None:
+    def _second_square(self, k: Expr, nu: Expr, first: Expr) -> None:
         n = self.normal
-        front = k / (2 * (nu - 1) * (n.m - nu))
+        front = self.name("c", k / (2 * (nu - 1) * (n.m - nu)))
         self.add(front * nu, self._e())
         self.add(front * (n.m - nu), self._f())
-        self._first(front * (2 * nu * n.m + 2 * nu - nu**2 - 3 * n.m), nu)
-        self.add(-front * nu**2 * n.sine * n.cosine * n.delta / (1 - nu * n.sine**2))
+        self._first(first + front * (2 * nu * n.m + 2 * nu - nu**2 - 3 * n.m), nu)
+        ends = n.sine * n.cosine * n.delta / n.below
+        self.add(-front * nu**2 * ends / (n.below**2 - nu * n.sine**2))
 
 
 def _tidy(e: Expr) -> Expr:

@@ -148,8 +148,9 @@ class _Patterns:
     def _groups(self, piece: Piece, dress: Dress, valid: tuple[Relational, ...]) -> list[_Group]:
         """Sample points sorted by pattern, bounded motion first."""
         problem = self.problem
-        factored = Factored(piece.radicand, dress.signs, dress, self.stem)
-        poles = Factored(_product(piece.reduction), dress.signs, dress, self.stem, False)
+        names = dress.signs, dress, self.stem, self.unknown
+        factored = Factored(piece.radicand, *names)
+        poles = Factored(_product(piece.reduction), *names, False)
         kernel = Graph([piece.kernel.expression])
         groups: dict[Any, _Group] = {}
         for seed in range(SEEDS):
@@ -164,11 +165,10 @@ class _Patterns:
             points, confirmed = drawn
             columns = dict(zip(points.symbols, points.values, strict=True))
             places = floats(kernel, columns)[0]
+            rows = factored.coefficients(columns), poles.coefficients(columns)
             for i, u in enumerate(places):
-                at = {s: float(v[i]) for s, v in columns.items()}
                 try:
-                    layout = factored.layout(at, self.unknown)
-                    beside = poles.layout(at, self.unknown)
+                    layout, beside = factored.layout(rows[0][i]), poles.layout(rows[1][i])
                 except Unclear:
                     continue
                 if beside.pairs:

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import argparse
 import json
+import signal
 import subprocess
 import sys
 import time
@@ -27,27 +28,43 @@ HERE = Path(__file__).parent
 METHODS = ("pdsolve", "peel", "cleared")
 KINDS = ("complete", "partial", "none")
 
+PATIENCE = 10
+"""How many times the limit a process may take by the clock."""
 
-def by_sympy(case: dict[str, Any], method: str, seconds: float) -> tuple[str, float]:
-    """What came of one method: right, wrong, nothing peeled, time-out or an error's name."""
-    if len(case["blocks"]) == 1 and len(case["blocks"][0]) == 1:
-        return "right", 0.0
+
+def asked(task: dict[str, Any], seconds: float) -> dict[str, Any]:
+    """The answer of sympy_worker.py in a process that is killed when it takes longer.
+
+    The limit is one of processor time, so that a busy machine is not held against it.
+    A time-out or a crash is an "error" too; a time-out counts as the limit.
+    """
+    late = {"error": "time-out", "seconds": seconds, "processor": seconds}
     try:
         run = subprocess.run(
             [sys.executable, str(HERE / "sympy_worker.py")],
-            input=json.dumps({"request": case["request"], "method": method}),
+            input=json.dumps({**task, "limit": seconds}),
             capture_output=True,
             text=True,
-            timeout=seconds + 5,
+            timeout=PATIENCE * seconds + 5,
             check=True,
             cwd=HERE.parent.parent,
             env={"PYTHONPATH": str(HERE.parent.parent), "PATH": ""},
         )
     except subprocess.TimeoutExpired:
-        return "time-out", seconds
-    except subprocess.CalledProcessError:
-        return "crash", 0.0
-    answer = json.loads(run.stdout)
+        return late
+    except subprocess.CalledProcessError as error:
+        if error.returncode == -signal.SIGXCPU:
+            return late
+        return {"error": "crash", "seconds": 0.0, "processor": 0.0}
+    answer: dict[str, Any] = json.loads(run.stdout)
+    return answer
+
+
+def by_sympy(case: dict[str, Any], method: str, seconds: float) -> tuple[str, float]:
+    """What came of one method: right, wrong, nothing peeled, time-out or an error's name."""
+    if len(case["blocks"]) == 1 and len(case["blocks"][0]) == 1:
+        return "right", 0.0
+    answer = asked({"request": case["request"], "method": method}, seconds)
     if "error" in answer:
         return answer["error"], answer["seconds"]
     found = {frozenset(block) for block in answer["blocks"]}

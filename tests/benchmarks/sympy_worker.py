@@ -1,16 +1,20 @@
-"""One verdict case by plain SymPy, in a process of its own: case on stdin, answer on stdout.
+"""One verdict case or integral by plain SymPy, in a process of its own: stdin to stdout.
 
 ``pdsolve``: the Hamilton-Jacobi equation as it stands.  ``peel``: ``pde_separate_add`` takes off
 one coordinate after another, as far as it goes.  ``cleared``: the same with the denominators of
 the equation cleared before every step.  The text is read by our reader, so that SymPy starts
-from a finished expression.
+from a finished expression.  ``integrate``: an antiderivative, of which only the kind is told.
 """
 
 from __future__ import annotations
 
 import json
+import math
+import resource
 import sys
 import time
+from collections.abc import Callable
+from typing import Any
 
 import sympy as sp
 from sympy.solvers.pde import pde_separate_add, pdsolve
@@ -60,20 +64,35 @@ def by_peeling(
     return [*blocks, [str(v) for v in left]]
 
 
-def main() -> None:
-    """Read {"request", "method"}, write {"blocks", "seconds"} or {"error", "seconds"}."""
-    task = json.load(sys.stdin)
+def by_integrate(integrand: sp.Expr, variable: sp.Symbol) -> str:
+    """Whether ``sympy.integrate`` left an integral in its answer."""
+    return "left" if sp.integrate(integrand, variable).has(sp.Integral) else "answered"
+
+
+def prepared(task: dict[str, Any]) -> Callable[[], dict[str, Any]]:
+    """The work of a task, with its text read."""
+    if task["method"] == "integrate":
+        integrand, variable = (sp.sympify(task[k]) for k in ("integrand", "variable"))
+        return lambda: {"kind": by_integrate(integrand, variable)}
     parts = equation(read_problem(task["request"]))
-    start = time.perf_counter()
+    if task["method"] == "pdsolve":
+        return lambda: {"blocks": by_pdsolve(*parts)}
+    return lambda: {"blocks": by_peeling(*parts, clear=task["method"] == "cleared")}
+
+
+def main() -> None:
+    """Read a task with its method, write its answer or {"error"}, and the time it took."""
+    task = json.load(sys.stdin)
+    work = prepared(task)
+    most = math.ceil(time.process_time() + task["limit"])
+    resource.setrlimit(resource.RLIMIT_CPU, (most, most + 1))
+    clock, processor = time.perf_counter(), time.process_time()
     try:
-        if task["method"] == "pdsolve":
-            blocks = by_pdsolve(*parts)
-        else:
-            blocks = by_peeling(*parts, clear=task["method"] == "cleared")
-        answer: dict[str, object] = {"blocks": blocks}
+        answer = work()
     except Exception as error:
         answer = {"error": type(error).__name__}
-    json.dump({**answer, "seconds": time.perf_counter() - start}, sys.stdout)
+    times = {"seconds": time.perf_counter() - clock, "processor": time.process_time() - processor}
+    json.dump({**answer, **times}, sys.stdout)
 
 
 if __name__ == "__main__":
