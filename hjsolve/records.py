@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 from enum import StrEnum
 from typing import TYPE_CHECKING, Literal, TypeAlias
 
-from sympy import Expr, Integral, Rational, S, Symbol, oo
+from sympy import Expr, Integral, Pow, Rational, S, Symbol, oo
 from sympy.core.relational import Relational
 
 if TYPE_CHECKING:
@@ -100,7 +100,8 @@ class Definition:
 
     Either ``definition`` is its value, or it is the ``index``-th (from 1) real
     root in ascending order of the polynomial ``root_of`` in ``unknown``, or
-    ``free`` says in words what it may be.
+    ``free`` says in words what it may be, for a turning point beside ``zero_of``,
+    the expression in it that vanishes.
     """
 
     symbol: Symbol
@@ -109,6 +110,7 @@ class Definition:
     unknown: Symbol | None = None
     index: int | None = None
     free: str | None = None
+    zero_of: Expr | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -239,9 +241,10 @@ class Antiderivative:
     reason: str = ""
 
     def formula(self, taken: Collection[str]) -> Formula:
-        """The first closed form, or the integral left as it stands from a reference point.
+        """The first closed form, or the integral left as it stands, from a turning point on.
 
-        The reference point's name keeps clear of the names ``taken``.
+        The turning point is a zero of the radicand; an integrand without one
+        has any reference point.  Its name keeps clear of the names ``taken``.
         """
         if self.closed_forms:
             return self.closed_forms[0]
@@ -251,7 +254,14 @@ class Antiderivative:
             name += "_"
         start = Symbol(name, real=True)
         words = f"reference point: any fixed value of {q.name} in the interval of motion"
-        return Formula(Integral(self.integrand, (q, start, q)), (Definition(start, free=words),))
+        half = (p for p in self.integrand.atoms(Pow) if p.exp.is_Rational and p.exp.q == 2)
+        radicands = {p.base for p in half if p.base.has(q)}
+        zero = None
+        if len(radicands) == 1:
+            words = f"lower turning point of {q.name}; {words} will do"
+            (zero,) = (r.xreplace({q: start}) for r in radicands)
+        below = Definition(start, free=words, zero_of=zero)
+        return Formula(Integral(self.integrand, (q, start, q)), (below,))
 
     def everywhere(self, taken: Collection[str]) -> Formula:
         """As ``formula``, from the closed forms that hold without a condition."""
@@ -288,11 +298,12 @@ class CompleteIntegral:
 
 @dataclass(frozen=True, slots=True)
 class Relation:
-    """∂S/∂α_k = β_k, and in words what it tells."""
+    """∂S/∂α_k = β_k, and in words what it tells; why an integral in it is left, if one is."""
 
     constant: Symbol
     equation: Formula
     says: str
+    reason: str = ""
 
 
 @dataclass(frozen=True, slots=True)

@@ -14,7 +14,7 @@ from sympy import Expr, Symbol
 from hjsolve.algebra.budget import limit
 from hjsolve.certification import certify
 from hjsolve.errors import Fault, InputError, OutOfTime
-from hjsolve.motion import set_in_motion
+from hjsolve.motion import by_parameter, set_in_motion
 from hjsolve.quadrature import integrate as quadrature
 from hjsolve.quadrature.complete import complete
 from hjsolve.records import (
@@ -34,7 +34,14 @@ from hjsolve.separation import detect, separate
 OnStage = Callable[[str, Solution | None], None]
 T = TypeVar("T")
 
-SECONDS = {"charts": 30.0, "separate": 20.0, "integrate": 20.0, "motion": 15.0, "certify": 20.0}
+SECONDS = {
+    "charts": 30.0,
+    "separate": 20.0,
+    "integrate": 20.0,
+    "motion": 15.0,
+    "parameter": 15.0,
+    "certify": 20.0,
+}
 """How long a stage may take before the ones after it go on without it."""
 
 
@@ -74,6 +81,10 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
     if integral is not None:
         what = "the equations of motion"
         motion = _stage("motion", what, partial(set_in_motion, separation, integrate), late)
+    if motion is not None:
+        what = "the motion by a parameter"
+        work = partial(by_parameter, separation, motion, integrate)
+        motion = _stage("parameter", what, work, late) or motion
     tell("certify", Solution(separation, integral, motion))
     solution = Solution(separation, integral, motion)
     for kept in (solution, Solution(separation), Solution(bare)):

@@ -11,23 +11,27 @@ Kepler's problem the eccentric anomaly.  Time is then a quadrature over λ.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Sequence
+from contextlib import suppress
+from dataclasses import dataclass, replace
 from itertools import product
 
 import sympy as sp
 from sympy import Add, Dummy, Expr, Integral, Mul, Symbol
 
+from hjsolve.algebra.budget import limit
 from hjsolve.algebra.calculus import derivative, is_formula
 from hjsolve.algebra.generators import NotRational
 from hjsolve.algebra.isolate import isolate
 from hjsolve.algebra.linear import constant_relations
 from hjsolve.algebra.regimes import boundary_values
+from hjsolve.errors import OutOfTime
 from hjsolve.motion.paths import Along, Integrate, Path, along, paths, square, turns
 from hjsolve.motion.smooth import smooth_antiderivative
 from hjsolve.records import (
     Definition,
     Formula,
+    Motion,
     Parametrisation,
     SeparatedEquation,
     Separation,
@@ -37,26 +41,29 @@ MOST = 4
 """Regimes given; those of the first form of each coordinate come first."""
 
 
-def parametrisations(
-    separation: Separation,
-    explicit: Collection[Symbol],
-    betas: dict[Symbol, Symbol],
-    integrate: Integrate,
-) -> tuple[Parametrisation, ...]:
-    """The coordinates not in ``explicit`` by a parameter; empty where none was found.
+def by_parameter(
+    separation: Separation, motion: Motion, integrate: Integrate, seconds: float = 12.0
+) -> Motion:
+    """The motion with the coordinates that stayed implicit by a parameter, where one was found.
 
-    ``betas`` gives β_k for each α_k.
+    What was found in ``seconds`` is kept.
     """
+    explicit = {q for q, formula in motion.coordinates if formula is not None}
     equations = [e for e in separation.equations if e.root != 0]
     left = [e for e in equations if e.coordinate not in explicit]
     time = separation.time_momentum
     if not left or time is None or time.has(separation.hamiltonian.time):
-        return ()
+        return motion
+    betas = {
+        c.symbol: r.constant for c, r in zip(separation.constants, motion.relations, strict=True)
+    }
     room = _Parameter(separation, left, betas, integrate)
     found: list[Parametrisation] = []
-    for choice in room.choices():
-        found += room.regimes(choice)
-    return tuple(found[:MOST])
+    with suppress(OutOfTime), limit(seconds):
+        for choice in room.choices():
+            for given in room.regimes(choice):
+                found.append(given)
+    return replace(motion, parametrisations=tuple(found[:MOST]))
 
 
 @dataclass(frozen=True, slots=True)
@@ -152,21 +159,24 @@ class _Parameter:
 
     # ----------------------------------------------------------- the regimes
 
-    def regimes(self, choice: _Choice) -> list[Parametrisation]:
+    def regimes(self, choice: _Choice) -> Iterator[Parametrisation]:
         """One a combination of the regimes in which every coordinate inverts."""
         tau = Dummy("tau", real=True)
         found: list[list[Path]] = []
         for e, g in zip(self.equations, choice.speeds, strict=True):
             domain = self.domain[e.coordinate]
             found.append(paths(e, g / e.root, g, tau, domain, self.h.functions, self.integrate))
-        written: list[Parametrisation] = []
+            if not found[-1]:
+                return
+        many = 0
         for chosen in product(*found):
-            if len(written) == MOST:
-                break
+            if many == MOST:
+                return
             if _compatible(chosen) and self._met(chosen, tau):
                 given = self._written(choice, chosen, tau)
-                written += [given] if given is not None else []
-        return written
+                if given is not None:
+                    many += 1
+                    yield given
 
     def _met(self, chosen: Sequence[Path], tau: Symbol) -> bool:
         """Whether balls find constants for which all coordinates are real in these regimes."""

@@ -15,7 +15,6 @@ from sympy import Add, Eq, Expr, Symbol
 from sympy.core.relational import Relational
 
 from hjsolve.algebra.calculus import derivative
-from hjsolve.motion.common import parametrisations
 from hjsolve.motion.explicit import explicit
 from hjsolve.records import (
     Antiderivative,
@@ -72,10 +71,7 @@ def set_in_motion(separation: Separation, integrate: Integrate) -> Motion | None
     found = explicit(separation, phases, integrate)
     coordinates = tuple((q, found.coordinates.get(q)) for q in h.coordinates)
     momenta = tuple((p, found.momenta.get(p)) for p in h.momenta)
-    explicitly = {q for q, f in coordinates if f is not None}
-    letters = {c.symbol: beta for c, beta in zip(separation.constants, betas, strict=True)}
-    further = parametrisations(separation, explicitly, letters, integrate)
-    return Motion(relations, coordinates, momenta, tuple(found.others), further)
+    return Motion(relations, coordinates, momenta, tuple(found.others))
 
 
 def slope(e: SeparatedEquation, alpha: Symbol) -> Expr:
@@ -117,6 +113,7 @@ def _relation(
     where: list[Definition] = []
     valid: list[Relational] = []
     present: list[Symbol] = []
+    reasons: dict[str, None] = {}
     for e in separation.equations:
         quadrature = table[e.coordinate, alpha]
         valid += [v for v in e.valid if v not in valid]
@@ -124,13 +121,16 @@ def _relation(
             if anti.integrand == 0:
                 continue
             form = anti.formula(separation.hamiltonian.names)
+            if anti.reason:
+                reasons[f"{e.coordinate.name}: {anti.reason}"] = None
             parts.append(factor * form.expression)
             where += [d for d in form.where if d not in where]
             valid += [v for v in form.valid if v not in valid]
             if e.coordinate not in present:
                 present.append(e.coordinate)
     formula = Formula(Eq(Add(*parts), beta, evaluate=False), tuple(where), tuple(valid))
-    return Relation(beta, formula, _says(separation, alpha, beta, present, time_part))
+    says = _says(separation, alpha, beta, present, time_part)
+    return Relation(beta, formula, says, "; ".join(reasons))
 
 
 def _says(

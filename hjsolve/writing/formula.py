@@ -43,6 +43,8 @@ def definition_object(definition: Definition) -> dict[str, Any]:
         entry["root_of"] = write_infix(definition.root_of)
         entry["in"] = definition.unknown.name if definition.unknown is not None else None
         entry["index"] = definition.index
+    if definition.zero_of is not None:
+        entry["zero_of"] = write_infix(definition.zero_of)
     if definition.free is not None:
         entry["free"] = definition.free
     return entry

@@ -145,6 +145,13 @@ def _motion(solution: Solution, motion: Motion) -> Section:
     for symbol, formula in (*motion.coordinates, *momenta):
         if formula is not None:
             section.lines.append(_line(symbol, formula))
+    for other in motion.others:
+        section.lines.append(_line(other.coordinate, other.motion, "another regime"))
+    for given in motion.parametrisations:
+        remark = f"{given.says} ({given.parameter.name})"
+        for symbol, formula in (*given.coordinates, *given.laws):
+            section.lines.append(_line(symbol, formula, remark))
+            remark = ""
     return section
 
 

@@ -206,6 +206,7 @@ def _motion(solution: Solution, motion: Motion, write: Write) -> dict[str, Any]:
                 "constant": relation.constant.name,
                 "equation": write(relation.equation),
                 "says": relation.says,
+                "reason": relation.reason,
             }
             for relation in motion.relations
         ],
