@@ -104,7 +104,9 @@ def vanish(
     differ from the real one.
     """
     findings = []
-    freed = names.eliminated(_under_roots(expressions)) if names is not None else {}
+    freed: dict[Symbol, Expr] = {}
+    if names is not None and any(e != 0 for e in expressions):
+        freed = names.eliminated(_under_roots(expressions))
     for expression in expressions:
         finding = _formal(expression.xreplace(freed))
         if finding is None and (positive or _roots(expression)):

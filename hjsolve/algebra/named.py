@@ -95,6 +95,7 @@ class Names:
         self._graphs = [
             Graph([d.definition] if d.definition is not None else _coefficients(d)) for d in where
         ]
+        self._eliminated: dict[frozenset[Symbol], dict[Symbol, Expr]] = {}
 
     @property
     def letters(self) -> frozenset[Symbol]:
@@ -139,6 +140,12 @@ class Names:
         linearly (Vieta's relations when all roots have names), not one of ``kept``
         where another will do.  Names with a definition are written out.
         """
+        key = frozenset(kept) & self.letters
+        if key not in self._eliminated:
+            self._eliminated[key] = self._solved(key)
+        return self._eliminated[key]
+
+    def _solved(self, kept: frozenset[Symbol]) -> dict[Symbol, Expr]:
         put: dict[Symbol, Expr] = {}
         differences: dict[Expr, tuple[Expr, ...]] = {}
         for d in self.where:
