@@ -27,7 +27,6 @@ from hjsolve.algebra.linear import constant_relations
 from hjsolve.algebra.regimes import boundary_values
 from hjsolve.errors import OutOfTime
 from hjsolve.motion.paths import Along, Integrate, Path, along, paths, square, turns
-from hjsolve.motion.smooth import smooth_antiderivative
 from hjsolve.records import (
     Definition,
     Formula,
@@ -246,9 +245,9 @@ class _Parameter:
         """symbol(λ) = a constant plus ∫ rate dλ, in closed form where one runs on."""
         start = self._name(f"{symbol.name}_0")
         running = context.unsquared(rate.xreplace(context.moving))
-        smooth = smooth_antiderivative(running, self.parameter)
-        if smooth is not None and all(context.positive(e) for e in smooth.positive):
-            change = smooth.expression
+        smooth = context.running_on(running)
+        if smooth is not None:
+            change = smooth
         else:
             inner = Dummy(self.parameter.name, real=True)
             change = Integral(running.xreplace({self.parameter: inner}), (inner, 0, self.parameter))

@@ -26,7 +26,6 @@ from hjsolve.algebra.linear import constant_relations
 from hjsolve.algebra.regimes import boundary_values
 from hjsolve.algebra.roots import unify_roots
 from hjsolve.motion.paths import Along, Integrate, Path, along, paths, square, turns
-from hjsolve.motion.smooth import smooth_antiderivative
 from hjsolve.records import (
     Definition,
     Formula,
@@ -207,19 +206,19 @@ class _Explicit:
         path, tau = leader.path, leader.tau
         context = Along(tau, {q: path.at}, path.valid, path.where, self.h.functions)
         rate = context.unsquared((above / leader.speed).xreplace({q: path.at}))
-        smooth = smooth_antiderivative(rate, tau)
-        if smooth is None or not all(context.positive(e) for e in smooth.positive):
+        smooth = context.running_on(rate)
+        if smooth is None:
             return None
         anti = self.integrate(above / leader.equation.root, q, self.domain[q])
         form = next((f for f in anti.closed_forms if set(f.valid) <= set(path.valid)), None)
         if form is None or not set(form.where) <= set(path.where):
             return None
         start = form.expression.xreplace({q: path.at}).subs(tau, 0)
-        offset = sp.simplify(unify_roots(start - smooth.expression.subs(tau, 0)))
+        offset = sp.simplify(unify_roots(start - smooth.subs(tau, 0)))
         if offset.has(sp.nan, sp.zoo, sp.oo):
             return None
         sign = leader.equation.sign if not turns(path.at, tau) else sp.S.One
-        whole = smooth.expression + offset
+        whole = smooth + offset
         return sign * whole.xreplace({tau: _oriented(sign, leader.phase)})
 
 

@@ -15,6 +15,7 @@ from hjsolve.algebra.identity import Finding, refute
 from hjsolve.algebra.named import Names
 from hjsolve.algebra.regimes import boundary_values, has_value, regime
 from hjsolve.motion.inversions import invert, returns
+from hjsolve.motion.smooth import smooth_antiderivatives
 from hjsolve.records import Antiderivative, Definition, Domain, SeparatedEquation, Truth
 
 Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
@@ -67,6 +68,13 @@ class Along:
         """Whether an expression is positive at all points of the regime that are met."""
         found = self._sample(sp.sign(e) - 1)
         return found.truth is not Truth.REFUTED and found.bound is not None
+
+    def running_on(self, rate: Expr) -> Expr | None:
+        """∫ rate over the parameter, in a form that runs on all along; None if none is known."""
+        for smooth in smooth_antiderivatives(rate, self.parameter):
+            if all(self.positive(e) for e in smooth.positive):
+                return smooth.expression
+        return None
 
     def unsquared(self, e: Expr) -> Expr:
         """√(x²) as x or −x where x keeps its sign."""

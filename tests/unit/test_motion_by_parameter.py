@@ -17,7 +17,7 @@ from hjsolve.algebra.named import Names
 from hjsolve.algebra.regimes import has_value, regime
 from hjsolve.motion import by_parameter, set_in_motion
 from hjsolve.motion.common import first_kind
-from hjsolve.motion.smooth import smooth_antiderivative
+from hjsolve.motion.smooth import smooth_antiderivatives
 from hjsolve.quadrature import integrate
 from hjsolve.reading import read_problem
 from hjsolve.records import Definition, Formula, Truth
@@ -93,8 +93,7 @@ def test_integrals_of_elliptic_functions_run_on(rate) -> None:
     m, n, w = sp.Rational(2, 5), sp.Rational(-3, 7), sp.Rational(3, 2)
     argument = w * t + sp.Rational(1, 3)
     f = rate(*(g(argument, m) for g in (jacobi_sn, jacobi_cn, jacobi_dn)), m, n)
-    found = smooth_antiderivative(f, t)
-    assert found is not None
+    found = next(smooth_antiderivatives(f, t))
     assert all(e > 0 for e in found.positive)
     with mpmath.workdps(30):
         names = {
@@ -114,10 +113,34 @@ def test_integrals_of_elliptic_functions_run_on(rate) -> None:
         assert abs(whole(end) - whole(mpmath.mpf(0)) - want) < mpmath.mpf(10) ** -20
 
 
+PERIODIC = [
+    "1/(5 + 3*cos(3*t/2 + 1/3))",
+    "1/(-5 + 3*cos(3*t/2 + 1/3))",
+    "1/(5 - 3*sin(3*t/2 + 1/3))**2",
+    "(2 + sin(3*t))**2/((3 + sin(3*t))*(2 - sin(3*t)))",
+    "1/(2*cosh(t/2 - 1) - 1)",
+    "cosh(t)/(3*cosh(t) - 2)**2",
+    "(t**2 + 4)/((t**2 + 1)*(2*t**2 + 3)**2)",
+]
+
+
+@pytest.mark.parametrize("rate", PERIODIC)
+def test_integrals_of_periodic_functions_run_on(rate: str) -> None:
+    """Against mpmath's quadrature over more than one period (Gradshteyn & Ryzhik 2.553)."""
+    t = sp.Symbol("t", real=True)
+    f = sp.sympify(rate, locals={"t": t})
+    fitting = [s for s in smooth_antiderivatives(f, t) if all(e > 0 for e in s.positive)]
+    assert len(fitting) == 1
+    with mpmath.workdps(30):
+        whole, call = (sp.lambdify(t, e, modules="mpmath") for e in (fitting[0].expression, f))
+        end = mpmath.mpf(9)
+        want = mpmath.quad(call, mpmath.linspace(0, end, 30))
+        assert abs(whole(end) - whole(mpmath.mpf(0)) - want) < mpmath.mpf(10) ** -20
+
+
 def test_a_pole_on_the_way_is_told() -> None:
     t = sp.Symbol("t", real=True)
-    found = smooth_antiderivative(1 / (1 - 3 * jacobi_sn(t, sp.Rational(1, 2)) ** 2), t)
-    assert found is not None
+    found = next(smooth_antiderivatives(1 / (1 - 3 * jacobi_sn(t, sp.Rational(1, 2)) ** 2), t))
     assert any(e < 0 for e in found.positive)
 
 
