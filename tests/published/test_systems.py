@@ -24,7 +24,9 @@ LONGEST = 310
 MANY_REGIMES = (
     "Stark, eta",
     "two centres, xi",
+    "two centres, xi, in the plane",
     "two centres, eta",
+    "two centres, eta, in the plane",
     "Kerr, r",
     "Kerr, theta",
     "Schwarzschild, r",
