@@ -7,9 +7,10 @@ at a real point.  Neither rests on a simplifier.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from itertools import chain, islice
 from typing import Any
 
 from sympy import Expr, Pow, Symbol, false, true
@@ -149,8 +150,11 @@ def refute(
     conditions: Sequence[Relational] = (),
     enough: int = 8,
     names: Names | None = None,
+    places: Iterable[Mapping[Symbol, Fraction]] = (),
 ) -> Finding:
     """Look for a real point at which a ball excludes 0.
+
+    ``places`` are points that are looked at after the first ``tries``.
 
     REFUTED with the point; UNDECIDED with the largest radius when the balls
     contained 0 at ``enough`` points (or at all that were found), without a
@@ -169,7 +173,9 @@ def refute(
         symbols = (symbols - names.symbols) | names.letters
     largest: float | None = None
     met = 0
-    for drawn in points(symbols, ranges, tries if not conditions else 10 * tries):
+    random = points(symbols, ranges, tries if not conditions else 10 * tries)
+    offered = (p for p in places if symbols <= p.keys())
+    for drawn in chain(islice(random, tries), offered, random):
         point = drawn if names is None else names.at(drawn)
         if point is None or (conditions and not _meets(sides, point)):
             continue

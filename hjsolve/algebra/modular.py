@@ -58,7 +58,7 @@ class Field:
 
     def __init__(self, graph: Graph) -> None:
         self.odd = _odd_root_degrees(graph)
-        self.p = _prime(self.odd, radicands(graph).constants)
+        self.p = prime(self.odd, radicands(graph).constants)
         self.salt = secrets.randbits(63)
         self.denominator = _argument_denominator(graph)
 
@@ -125,7 +125,7 @@ def _argument_denominator(graph: Graph) -> int:
     return common
 
 
-def _prime(odd: int, constants: Sequence[tuple[int, int]]) -> int:
+def prime(odd: int, constants: Sequence[tuple[int, int]]) -> int:
     """A random prime below 2**31, 3 modulo 4, that suits the roots taken.
 
     Odd roots are unique modulo it, and the rational numbers ``constants`` are

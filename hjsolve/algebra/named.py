@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Collection, Mapping, Sequence
 from fractions import Fraction
-from itertools import pairwise
+from itertools import combinations_with_replacement, pairwise
 from typing import Any
 
 import numpy as np
@@ -164,6 +164,39 @@ class Names:
             if d.definition is not None:
                 put[d.symbol] = d.definition.xreplace(put)
         return put
+
+
+def divided_differences(
+    definitions: Sequence[Definition],
+) -> tuple[list[Expr], list[tuple[Symbol, Symbol]]]:
+    """The relations of the named roots, and the pairs (smaller, larger) among them.
+
+    P[e_1, …, e_k] = Σ_j c_j h_{j−k+1}(e_1, …, e_k) with the complete symmetric polynomials h.
+    Raises ValueError for two names of one root.
+    """
+    families: dict[tuple[Expr, Symbol], list[Definition]] = {}
+    for d in definitions:
+        if d.root_of is not None and d.unknown is not None:
+            families.setdefault((d.root_of, d.unknown), []).append(d)
+    relations, order = [], []
+    for (polynomial, unknown), members in families.items():
+        members.sort(key=lambda d: d.index or 0)
+        letters = [d.symbol for d in members]
+        order += [(a, b) for i, a in enumerate(letters) for b in letters[i + 1 :]]
+        c = sp.Poly(polynomial, unknown).all_coeffs()[::-1]
+        if len({d.index for d in members} & set(range(1, len(c)))) < len(members):
+            raise ValueError("two names for one root, or a root that there is not")
+        for k in range(1, len(letters) + 1):
+            relations.append(
+                sum((x * _complete(letters[:k], j - k + 1) for j, x in enumerate(c)), sp.S.Zero)
+            )
+    return relations, order
+
+
+def _complete(letters: Sequence[Symbol], degree: int) -> Expr:
+    if degree < 0:
+        return sp.S.Zero
+    return sp.Add(*(sp.Mul(*c) for c in combinations_with_replacement(letters, degree)))
 
 
 def _linear(equation: Expr, last: Sequence[Symbol]) -> tuple[Symbol, Expr] | None:

@@ -12,8 +12,9 @@ from typing import Any
 from sympy import Abs, Add, Expr, Integer, Lt, Mul, Pow, Rational, S
 from sympy.core.relational import Relational
 
+from hjsolve.algebra.factors import Key
 from hjsolve.quadrature.kernel import Kernel
-from hjsolve.quadrature.ratios import Key, Ratio, coefficients, degree, factors
+from hjsolve.quadrature.ratios import Ratio, coefficients, degree, factors
 from hjsolve.quadrature.signs import Signs
 
 HALF = Fraction(1, 2)

@@ -10,12 +10,13 @@ from typing import Literal
 from sympy import Expr, Le
 
 from hjsolve.algebra.balls import NotSupported
+from hjsolve.algebra.factors import Key
 from hjsolve.algebra.graph import TooLarge
 from hjsolve.quadrature import check
 from hjsolve.quadrature.factored import Unclear, with_names
 from hjsolve.quadrature.points import sample
 from hjsolve.quadrature.problem import Problem, Reading
-from hjsolve.quadrature.ratios import GivenUp, Key
+from hjsolve.quadrature.ratios import GivenUp
 from hjsolve.quadrature.reduction import Reduction
 from hjsolve.quadrature.regimes import PieceFormula, boundary, regimes
 from hjsolve.quadrature.signs import Assumption, Signs

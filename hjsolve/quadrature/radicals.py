@@ -14,7 +14,8 @@ from typing import Any
 
 from sympy import Add, Expr, Integer, Mul, Pow, Rational, Symbol, factorint
 
-from hjsolve.quadrature.ratios import GivenUp, Key, Ratio, factors
+from hjsolve.algebra.factors import Key
+from hjsolve.quadrature.ratios import GivenUp, Ratio, factors
 from hjsolve.quadrature.signs import Signs
 
 CLASS_LIMIT = 4

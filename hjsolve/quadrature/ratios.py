@@ -159,22 +159,6 @@ class Ratio:
         return degree(self.num) <= 0 and degree(self.den) <= 0
 
 
-class Key:
-    """A polynomial as a key of a mapping (``fmpz_mpoly`` itself is not hashable)."""
-
-    __slots__ = ("_hash", "poly")
-
-    def __init__(self, poly: Any) -> None:
-        self.poly = poly
-        self._hash = hash(tuple((e, int(c)) for e, c in poly.terms()))
-
-    def __hash__(self) -> int:
-        return self._hash
-
-    def __eq__(self, other: object) -> bool:
-        return isinstance(other, Key) and self.poly == other.poly
-
-
 def degree(poly: Any) -> int:
     """The degree in u of an ``fmpz_mpoly``, -1 for zero."""
     return -1 if poly.is_zero() else int(poly.degrees()[0])

@@ -13,8 +13,9 @@ from typing import Any
 
 from sympy import Expr, oo
 
+from hjsolve.algebra.factors import Key
 from hjsolve.quadrature import univariate
-from hjsolve.quadrature.ratios import GivenUp, Key, Ratio, Ring, degree, factors
+from hjsolve.quadrature.ratios import GivenUp, Ratio, Ring, degree, factors
 
 
 class Undetermined(Exception):
