@@ -36,7 +36,7 @@ from hjsolve.records import (
     Truth,
 )
 
-TRIES, WANTED = 240, 2
+TRIES, WANTED = 1000, 2
 """Random points tried for each regime, and cycles compared."""
 
 WRONG = 1e-20
