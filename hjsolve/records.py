@@ -270,16 +270,33 @@ class Antiderivative:
 
 
 @dataclass(frozen=True, slots=True)
+class Cycle:
+    """The integrals over one cycle of a coordinate, in one regime of the constants.
+
+    ``action`` is (1/2π)∮p dq of a libration, not negative, or (1/2π)∫p dq over a
+    turn with q increasing of a rotation, with the branch sign of the momentum in
+    it.  ``derivatives`` has ∂action/∂α_k by constant.  None where no closed form
+    was found or where it failed its check.
+    """
+
+    kind: Literal["libration", "rotation"]
+    action: Formula | None
+    derivatives: tuple[tuple[Symbol, Formula | None], ...]
+
+
+@dataclass(frozen=True, slots=True)
 class Term:
     """W_i(q_i): the momentum on its positive branch, and its antiderivative.
 
     ``drift`` and ``root`` are the antiderivatives of the two parts of the
-    momentum, so that W_i on either branch is drift + sign·root.
+    momentum, so that W_i on either branch is drift + sign·root.  ``cycles`` are
+    the integrals over a whole cycle, one entry a regime in which there is one.
     """
 
     equation: SeparatedEquation
     drift: Antiderivative
     root: Antiderivative
+    cycles: tuple[Cycle, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -291,6 +308,11 @@ class CompleteIntegral:
     time_term: Expr | None
     characteristic: Formula | None
     principal: Formula | None
+
+    def without(self, parts: Collection[Part]) -> CompleteIntegral:
+        """The same with no cycles in the terms that are among ``parts``."""
+        terms = (replace(t, cycles=()) if t in parts else t for t in self.terms)
+        return replace(self, terms=tuple(terms))
 
 
 # ------------------------------------------------------------------- motion
@@ -349,7 +371,7 @@ class Motion:
     others: tuple[OtherRegime, ...] = ()
     parametrisations: tuple[Parametrisation, ...] = ()
 
-    def without(self, parts: Collection[OtherRegime | Parametrisation]) -> Motion:
+    def without(self, parts: Collection[Part]) -> Motion:
         """The motion less some of its further regimes and parametrisations."""
         return replace(
             self,
@@ -359,6 +381,9 @@ class Motion:
 
 
 # ------------------------------------------------------------ certification
+
+Part: TypeAlias = OtherRegime | Parametrisation | Term
+"""What an answer can do without when it is refuted; of a term, its cycles."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -375,11 +400,11 @@ class Check:
 class Certificate:
     """All that was checked of an answer.
 
-    ``left_out`` are the further regimes and parametrisations that were refuted.
+    ``left_out`` are the parts that were refuted.
     """
 
     checks: tuple[Check, ...] = ()
-    left_out: tuple[OtherRegime | Parametrisation, ...] = ()
+    left_out: tuple[Part, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -17,6 +17,7 @@ from hjsolve.errors import Fault, InputError, OutOfTime
 from hjsolve.motion import by_parameter, set_in_motion
 from hjsolve.quadrature import integrate as quadrature
 from hjsolve.quadrature.complete import complete
+from hjsolve.quadrature.cycles import with_cycles
 from hjsolve.records import (
     Antiderivative,
     Certificate,
@@ -40,6 +41,7 @@ SECONDS = {
     "integrate": 20.0,
     "motion": 15.0,
     "parameter": 15.0,
+    "cycles": 10.0,
     "certify": 20.0,
 }
 """How long a stage may take before the ones after it go on without it."""
@@ -85,6 +87,10 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
         what = "the motion by a parameter"
         work = partial(by_parameter, separation, motion, integrate)
         motion = _stage("parameter", what, work, late) or motion
+    if integral is not None:
+        what = "the integrals over a cycle"
+        over = partial(with_cycles, separation, integral, integrate)
+        integral = _stage("cycles", what, over, late) or integral
     tell("certify", Solution(separation, integral, motion))
     solution = Solution(separation, integral, motion)
     for kept in (solution, Solution(separation), Solution(bare)):
@@ -97,6 +103,7 @@ def solve(hamiltonian: Hamiltonian, on_stage: OnStage | None = None) -> Solution
         first = placed.charts.checks if placed.charts else ()
         return replace(
             kept,
+            integral=kept.integral and kept.integral.without(certificate.left_out),
             motion=kept.motion and kept.motion.without(certificate.left_out),
             certificate=Certificate((*first, *certificate.checks, *late)),
             charts=placed.charts,

@@ -16,6 +16,13 @@ def derivative(expression: Expr, x: Symbol) -> Expr:
     return sp.diff(expression, x).replace(sp.DiracDelta, lambda *_: sp.S.Zero)
 
 
+def root_derivative(root: Expr, x: Symbol) -> Expr:
+    """∂root/∂x, through the square of the root where that is at hand."""
+    if isinstance(root, sp.Pow) and root.exp == sp.Rational(1, 2):
+        return derivative(root.base, x) / (2 * root)
+    return derivative(root, x)
+
+
 def is_formula(expression: Expr) -> bool:
     """Whether an answer may hold this: no cases, infinities or derivatives left over."""
     if expression.has(*_UNFINISHED):

@@ -23,6 +23,7 @@ from hjsolve.algebra.named import Names
 from hjsolve.algebra.regimes import has_value, regime
 from hjsolve.algebra.sampling import Range
 from hjsolve.certification.along import vanish_along
+from hjsolve.certification.cycles import cycle_claims
 from hjsolve.certification.forms import differentiated
 from hjsolve.certification.parametrised import parametrised
 from hjsolve.errors import Fault, OutOfTime
@@ -34,8 +35,8 @@ from hjsolve.records import (
     Formula,
     Hamiltonian,
     Motion,
-    OtherRegime,
     Parametrisation,
+    Part,
     SeparatedEquation,
     Separation,
     Truth,
@@ -51,9 +52,9 @@ CLAIM_SECONDS, ALL_SECONDS = 4.0, 18.0
 FORMS_SECONDS = 3.0
 """How long the closed forms of one coordinate may take; those proved by then stay proved."""
 
-Part = OtherRegime | Parametrisation
 Claim = tuple[str, Callable[[], list[Check]], Part | None]
-"""What is claimed, its checks, and the part of the motion that goes if they are refuted."""
+"""What is claimed, its checks, and what goes if they are refuted: a part of the motion, a
+term's cycles."""
 
 BRANCH_LIMIT = 3
 """With more coordinates of two branches, the branches are checked at random signs."""
@@ -87,6 +88,8 @@ def certify(
         claims.append((what, partial(_quadratures, term.drift, term.root, h, ranges), None))
     if motion is not None:
         claims += _motion(separation, motion, ranges)
+    if integral is not None:
+        claims += cycle_claims(integral, h)
     checks: list[Check] = []
     stop = time.monotonic() + ALL_SECONDS
     left_out: list[Part] = []

@@ -14,7 +14,7 @@ import sympy as sp
 from sympy import Add, Eq, Expr, Symbol
 from sympy.core.relational import Relational
 
-from hjsolve.algebra.calculus import derivative
+from hjsolve.algebra.calculus import derivative, root_derivative
 from hjsolve.motion.explicit import explicit
 from hjsolve.records import (
     Antiderivative,
@@ -23,7 +23,6 @@ from hjsolve.records import (
     Formula,
     Motion,
     Relation,
-    SeparatedEquation,
     Separation,
 )
 
@@ -57,7 +56,7 @@ def set_in_motion(separation: Separation, integrate: Integrate) -> Motion | None
             q = e.coordinate
             table[q, c.symbol] = Quadrature(
                 integrate(derivative(e.drift, c.symbol), q, domain[q]),
-                integrate(slope(e, c.symbol), q, domain[q]),
+                integrate(root_derivative(e.root, c.symbol), q, domain[q]),
             )
     in_time = {c.symbol: _time_part(separation, c.symbol, integrate) for c in separation.constants}
     relations = tuple(
@@ -72,16 +71,6 @@ def set_in_motion(separation: Separation, integrate: Integrate) -> Motion | None
     coordinates = tuple((q, found.coordinates.get(q)) for q in h.coordinates)
     momenta = tuple((p, found.momenta.get(p)) for p in h.momenta)
     return Motion(relations, coordinates, momenta, tuple(found.others))
-
-
-def slope(e: SeparatedEquation, alpha: Symbol) -> Expr:
-    """∂root/∂α, through p² where that is at hand."""
-    if e.root == 0:
-        return sp.S.Zero
-    if isinstance(e.root, sp.Pow) and e.root.exp == sp.Rational(1, 2):
-        above = derivative(e.root.base, alpha)
-        return above / (2 * e.root)
-    return derivative(e.root, alpha)
 
 
 def _beta(alpha: Symbol, taken: frozenset[str]) -> Symbol:

@@ -55,6 +55,38 @@ class Sample:
         return {**point, **self.extra[i]} if self.extra else point
 
 
+class Order:
+    """The points of a draw, those first whose signs differ most from the ones kept.
+
+    What depends on the sign of a letter shows only at points with both signs of it.
+    """
+
+    def __init__(self, sample: Sample) -> None:
+        self._signs = np.sign(sample.values).T
+        count = len(self._signs)
+        self._apart, self._misses = np.zeros(count), np.zeros(count)
+        self._left = np.ones(count, dtype=bool)
+        self.missed = 0
+        """How many of the points had no cycle."""
+
+    def keep(self, i: int) -> None:
+        """The point is used."""
+        apart = (self._signs != self._signs[i]).sum(axis=1)
+        self._apart = np.minimum(self._apart, apart) if self._apart.any() else apart
+
+    def miss(self, i: int) -> None:
+        """The point has no cycle, nor perhaps have others with its signs."""
+        self.missed += 1
+        self._misses += (self._signs == self._signs[i]).all(axis=1)
+
+    def __iter__(self) -> Iterator[int]:
+        while self._left.any():
+            rank = np.where(self._left, self._misses - self._apart / 1e3, np.inf)
+            best = int(np.argmin(rank))
+            self._left[best] = False
+            yield best
+
+
 def floats(graph: Graph, values: dict[Symbol, Floats]) -> list[Floats]:
     """The roots of a graph at many points at once; nan where not real.
 

@@ -20,6 +20,7 @@ from hjsolve.records import (
     Motion,
     Separation,
     Solution,
+    Term,
 )
 from hjsolve.writing.solution import closed_forms, family
 
@@ -131,7 +132,24 @@ def _integral(hamiltonian: Hamiltonian, integral: CompleteIntegral) -> Section:
                     term.equation.where,
                 )
             )
+        section.lines.extend(_cycles(term, _letter("J", hamiltonian)))
     return section
+
+
+def _cycles(term: Term, letter: Symbol) -> list[Line]:
+    """The action over a cycle and its derivatives by the constants on which it depends."""
+    lines = []
+    for cycle in term.cycles:
+        action = Function(f"{letter.name}_{term.equation.coordinate.name}")
+        arguments = [alpha for alpha, f in cycle.derivatives if f is None or f.expression != 0]
+        left = action(*arguments) if arguments else Symbol(action.__name__)
+        if cycle.action is not None:
+            lines.append(_line(left, cycle.action, f"action, {cycle.kind}"))
+        for alpha in arguments:
+            formula = dict(cycle.derivatives)[alpha]
+            if formula is not None:
+                lines.append(_line(left.diff(alpha), formula, cycle.kind))
+    return lines
 
 
 def _motion(solution: Solution, motion: Motion) -> Section:

@@ -160,6 +160,14 @@ def _term(term: Term, write: Write) -> dict[str, Any]:
         "family": family(term),
         "substitution": write(term.root.substitution or term.drift.substitution),
         "reason": "; ".join(dict.fromkeys(r for r in (term.drift.reason, term.root.reason) if r)),
+        "cycles": [
+            {
+                "kind": cycle.kind,
+                "action": write(cycle.action),
+                "derivatives": {alpha.name: write(f) for alpha, f in cycle.derivatives},
+            }
+            for cycle in term.cycles
+        ],
     }
 
 

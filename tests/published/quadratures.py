@@ -17,7 +17,7 @@ import mpmath
 import sympy as sp
 from facts import HERE
 
-from hjsolve.motion.equations import slope
+from hjsolve.algebra.calculus import root_derivative
 from hjsolve.records import Definition, Domain, Formula, SeparatedEquation
 
 DIGITS = 30
@@ -90,7 +90,7 @@ def quadratures(entry: dict[str, Any]) -> dict[str, Case]:
         integrands["drift"] = drift
     for name in entry["families"]:
         if name in whole.symbols:
-            integrands[name] = slope(equation, whole.symbols[name])
+            integrands[name] = root_derivative(equation.root, whole.symbols[name])
     return {what: replace(whole, integrand=e) for what, e in integrands.items()}
 
 
