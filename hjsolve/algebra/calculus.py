@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 import sympy as sp
 from sympy import Expr, Symbol
 from sympy.core.function import AppliedUndef
@@ -21,6 +23,17 @@ def root_derivative(root: Expr, x: Symbol) -> Expr:
     if isinstance(root, sp.Pow) and root.exp == sp.Rational(1, 2):
         return derivative(root.base, x) / (2 * root)
     return derivative(root, x)
+
+
+def put_in(expression: Expr, values: Mapping[Symbol, Expr]) -> Expr:
+    """The expression with values for symbols, also where it differentiates by one of them."""
+    letters, places = {}, {}
+    for d in expression.atoms(sp.Derivative):
+        moved = [x for x in d.free_symbols if x in values]
+        if moved:
+            letters[d] = sp.Dummy()
+            places[letters[d]] = sp.Subs(d, moved, [values[x] for x in moved])
+    return expression.xreplace(letters).xreplace(dict(values)).xreplace(places)
 
 
 def is_formula(expression: Expr) -> bool:

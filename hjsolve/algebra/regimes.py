@@ -8,6 +8,8 @@ import sympy as sp
 from sympy import Dummy, Expr, Symbol
 from sympy.core.relational import Relational
 
+from hjsolve.records import Domain
+
 
 def boundary_values(valid: Sequence[Relational]) -> dict[Symbol, Expr]:
     """The values that letters have on a boundary: a ≤ b together with b ≤ a."""
@@ -57,3 +59,15 @@ def has_value(e: Expr) -> Relational:
     The square of a path, in which its root is gone, may have one where it has not.
     """
     return sp.Lt(0, 2 + sp.atan(e), evaluate=False)
+
+
+def inside(domain: Domain, path: Expr) -> list[Relational]:
+    """That a coordinate's path stays in its domain; an angle runs on."""
+    if domain.kind == "angle":
+        return []
+    found = []
+    if domain.lower.is_finite:
+        found.append(sp.Lt(domain.lower, path, evaluate=False))
+    if domain.upper.is_finite:
+        found.append(sp.Lt(path, domain.upper, evaluate=False))
+    return found

@@ -18,9 +18,10 @@ from sympy.core.relational import Relational
 
 from hjsolve.algebra.brackets import brackets, independent
 from hjsolve.algebra.budget import limit
+from hjsolve.algebra.calculus import put_in
 from hjsolve.algebra.identity import Finding, vanish
 from hjsolve.algebra.named import Names
-from hjsolve.algebra.regimes import has_value, regime
+from hjsolve.algebra.regimes import has_value, inside, regime
 from hjsolve.algebra.sampling import Range
 from hjsolve.certification.along import vanish_along
 from hjsolve.certification.cycles import cycle_claims
@@ -315,16 +316,18 @@ def _hamilton(
     valid = (*dict.fromkeys(v for s in needed for v in formulas[s].valid), *_inside(h, q))
     defined = tuple(dict.fromkeys(d for s in needed for d in formulas[s].where))
     names = Names(defined) if defined else None
+    domain = dict(zip(h.coordinates, h.domains, strict=True))
     findings: list[Finding] = []
     branches = _branches(separation.equations)
     for branch in branches[:1] + branches[-1:]:
         put = {s: e.xreplace(branch) for s, e in known.items()}
-        kept = [d.symbol for d in defined]
+        kept = names.held if names is not None else ()
         signs, conditions = regime(tuple(v.xreplace(put) for v in valid), kept)
         residues = [
-            (sp.diff(put[q], h.time) - rate.xreplace(put)).xreplace(signs),
-            (sp.diff(put[p], h.time) - force.xreplace(put)).xreplace(signs),
+            (sp.diff(put[q], h.time) - put_in(rate, put)).xreplace(signs),
+            (sp.diff(put[p], h.time) - put_in(force, put)).xreplace(signs),
         ]
-        conditions.append(has_value(put[q].xreplace(signs)))
+        at = put[q].xreplace(signs)
+        conditions += [has_value(at), *inside(domain[q], at)]
         findings += vanish_along(residues, ranges, h.functions, conditions, names)
     return [_check(claim, findings)]

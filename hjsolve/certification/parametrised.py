@@ -16,7 +16,7 @@ from sympy import Expr, Symbol
 
 from hjsolve.algebra.identity import Finding, vanish
 from hjsolve.algebra.named import Names
-from hjsolve.algebra.regimes import boundary_values, has_value, regime
+from hjsolve.algebra.regimes import boundary_values, has_value, inside, regime
 from hjsolve.algebra.sampling import Range
 from hjsolve.certification.along import vanish_along
 from hjsolve.records import Parametrisation, Separation
@@ -84,8 +84,12 @@ def _along(
     valid = dict.fromkeys(v for _, f in given.coordinates for v in f.valid)
     where = tuple(dict.fromkeys(d for _, f in given.coordinates for d in f.where))
     names = Names(where) if where else None
-    kept = [d.symbol for d in where]
+    kept = names.held if names is not None else ()
     signs, conditions = regime(tuple(v.xreplace(dict(known)) for v in valid), kept)
-    conditions += [has_value(known[q].xreplace(signs)) for q, _ in given.coordinates]
-    functions = separation.hamiltonian.functions
+    h = separation.hamiltonian
+    domain = dict(zip(h.coordinates, h.domains, strict=True))
+    for q, _ in given.coordinates:
+        at = known[q].xreplace(signs)
+        conditions += [has_value(at), *inside(domain[q], at)]
+    functions = h.functions
     return vanish_along([r.xreplace(signs) for r in residues], ranges, functions, conditions, names)

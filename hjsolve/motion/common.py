@@ -182,7 +182,7 @@ class _Parameter:
         moving = {e.coordinate: p.at for e, p in zip(self.equations, chosen, strict=True)}
         valid = tuple(v for p in chosen for v in p.valid)
         where = tuple(dict.fromkeys(d for p in chosen for d in p.where))
-        return Along(tau, moving, valid, where, self.h.functions).met()
+        return Along(tau, moving, valid, where, self.h.functions, self.domain).met()
 
     def _written(
         self, choice: _Choice, along_paths: Sequence[Path], tau: Symbol
@@ -202,7 +202,7 @@ class _Parameter:
             momenta.append((e.momentum, Formula(momentum, where, valid)))
         moving = {q: f.expression for q, f in coordinates}
         laws, rates = [], []
-        context = Along(self.parameter, moving, valid, where, self.h.functions)
+        context = Along(self.parameter, moving, valid, where, self.h.functions, self.domain)
         for symbol, rate in self._rates(choice):
             law = self._law(symbol, rate.xreplace(put), context)
             rates.append((symbol, Formula(rate.xreplace(put), where, valid)))

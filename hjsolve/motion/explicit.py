@@ -204,7 +204,7 @@ class _Explicit:
         """sign·∫ above/root dq as a function of time, through the turning points."""
         q = leader.equation.coordinate
         path, tau = leader.path, leader.tau
-        context = Along(tau, {q: path.at}, path.valid, path.where, self.h.functions)
+        context = Along(tau, {q: path.at}, path.valid, path.where, self.h.functions, self.domain)
         rate = context.unsquared((above / leader.speed).xreplace({q: path.at}))
         smooth = context.running_on(rate)
         if smooth is None:

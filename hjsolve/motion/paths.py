@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection
+from collections.abc import Callable, Collection, Mapping
 from dataclasses import dataclass
 
 import sympy as sp
@@ -13,7 +13,7 @@ from hjsolve.algebra.calculus import derivative, is_formula
 from hjsolve.algebra.functions import jacobi_cn, jacobi_dn, jacobi_sn
 from hjsolve.algebra.identity import Finding, refute
 from hjsolve.algebra.named import Names
-from hjsolve.algebra.regimes import boundary_values, has_value, regime
+from hjsolve.algebra.regimes import boundary_values, has_value, inside, regime
 from hjsolve.motion.inversions import invert, returns
 from hjsolve.motion.smooth import smooth_antiderivatives
 from hjsolve.records import Antiderivative, Definition, Domain, SeparatedEquation, Truth
@@ -63,6 +63,7 @@ class Along:
     valid: tuple[Relational, ...]
     where: tuple[Definition, ...]
     functions: Collection[str]
+    domains: Mapping[Symbol, Domain]
 
     def positive(self, e: Expr) -> bool:
         """Whether an expression is positive at all points of the regime that are met."""
@@ -90,9 +91,11 @@ class Along:
     def _sample(self, e: Expr) -> Finding:
         """Balls of an expression at points of the regime where all coordinates are real."""
         names = Names(self.where) if self.where else None
-        kept = names.symbols if names is not None else ()
+        kept = names.held if names is not None else ()
         signs, conditions = regime([v.xreplace(self.moving) for v in self.valid], kept)
-        conditions += [has_value(path.xreplace(signs)) for path in self.moving.values()]
+        for q, path in self.moving.items():
+            at = path.xreplace(signs)
+            conditions += [has_value(at), *inside(self.domains[q], at)]
         return refute(
             e.xreplace(boundary_values(self.valid)).xreplace(signs),
             {self.parameter: (-sp.S.One, sp.S.One)},
@@ -129,7 +132,7 @@ class _Case:
         conditions = [v.xreplace({q: path}) for v in self.valid if v.rel_op in ("<", ">")]
         momentum = e.drift if e.root == 0 else (self.speed * slope) ** 2 - e.root**2
         residue = momentum.xreplace(boundary_values(self.valid)).xreplace({q: path})
-        conditions.append(has_value(path))
+        conditions += [has_value(path), *inside(self.domain, path)]
         if e.root == 0:  # only whether it has a real value
             residue = Add(residue, -residue, evaluate=False)
         around = {self.tau: (-sp.S.One, sp.S.One)}
