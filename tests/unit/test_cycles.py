@@ -5,6 +5,7 @@ from __future__ import annotations
 import dataclasses
 import itertools
 import random
+import time
 from functools import cache, lru_cache, partial
 from typing import Any
 
@@ -262,6 +263,26 @@ def test_a_limit_read_wrongly_is_not_returned(monkeypatch: pytest.MonkeyPatch) -
     assert integral.terms[0].cycles == ()
     assert integral.terms[1].cycles != ()  # of phi: a constant momentum needs no limit
     assert len(separation.constants) == 2
+
+
+def test_time_is_bounded_and_what_was_found_is_kept() -> None:
+    case, term = found("two centres in the plane, xi, action")
+    alphas = [case.symbols[n] for n in sorted(case.symbols) if n.startswith("alpha")]
+    again = cache(integrate)
+    for alpha in alphas:
+        again(root_derivative(term.equation.root, alpha), case.variable, case.domain)
+    began = time.monotonic()
+    some = room.cycles(term, case.domain, alphas, again, seconds=0.3)
+    assert time.monotonic() - began < 0.3 + 0.5
+    assert some == term.cycles[: len(some)]
+
+
+def test_an_angle_whose_momentum_is_not_periodic_has_no_cycle() -> None:
+    problem = {"coordinates": ["q"], "hamiltonian": "p_q**2/2 + q**2", "domains": {"q": "angle"}}
+    assert worked(problem)[1].terms[0].cycles == ()
+    line = {"coordinates": ["q"], "hamiltonian": "p_q**2/2 + q**2"}
+    (cycle,) = worked(line)[1].terms[0].cycles
+    assert str(cycle.action.expression if cycle.action else None) == "sqrt(2)*alpha_1/2"
 
 
 # --------------------------------------------------------- actions in numbers
