@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Callable, Collection, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from itertools import chain, islice
+from itertools import chain
 from typing import Any
 
 from sympy import Expr, Pow, Symbol, false, true
@@ -25,6 +25,7 @@ from hjsolve.algebra.balls import (
     Ridges,
     precision,
 )
+from hjsolve.algebra.crowd import likely
 from hjsolve.algebra.graph import Graph, TooLarge
 from hjsolve.algebra.modular import NoPoints, Walk
 from hjsolve.algebra.named import Names
@@ -173,9 +174,10 @@ def refute(
         symbols = (symbols - names.symbols) | names.letters
     largest: float | None = None
     met = 0
-    random = points(symbols, ranges, tries if not conditions else 10 * tries)
     offered = (p for p in places if symbols <= p.keys())
-    for drawn in chain(islice(random, tries), offered, random):
+    where = names.where if names is not None else ()
+    crowd = likely(symbols, ranges, conditions, where, 2 * tries) if conditions or where else ()
+    for drawn in chain(points(symbols, ranges, tries), offered, crowd):
         point = drawn if names is None else names.at(drawn)
         if point is None or (conditions and not _meets(sides, point)):
             continue

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Collection, Iterator, Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from fractions import Fraction
 from itertools import combinations_with_replacement, pairwise
 from typing import Any
@@ -15,7 +14,6 @@ from sympy import Expr, Symbol
 
 from hjsolve.algebra.balls import BallWalk, Imprecise, OutsideDomain, precision
 from hjsolve.algebra.graph import Graph
-from hjsolve.algebra.sampling import Range, points
 from hjsolve.records import Definition
 
 MARGIN = 1e-5
@@ -139,33 +137,6 @@ class Names:
             return None
         return known
 
-    def drawn(
-        self, symbols: Collection[Symbol], ranges: Mapping[Symbol, Range], tries: int
-    ) -> Iterator[dict[Symbol, Fraction]]:
-        """Points of ``symbols`` and the letters, from roots drawn in their order.
-
-        Letters drawn one by one hardly ever give a cubic three real roots.  What
-        is solved for is rounded: the roots at a point come from ``at``.
-        """
-        roots = [d for d in self.where if d.root_of is not None]
-        solved = {s: v for s, v in self.eliminated().items() if s not in self.symbols}
-        named = {d.symbol for d in roots}
-        free = ((set(symbols) | self.letters) - self.symbols | named) - set(solved)
-        order = sorted(free, key=lambda s: s.name)
-        value = sp.lambdify(order, list(solved.values()), modules="math")
-        for at in points(free, ranges, tries):
-            for group in {d.root_of for d in roots}:
-                own = [d.symbol for d in roots if d.root_of == group and d.symbol in at]
-                at.update(zip(own, sorted(at[s] for s in own), strict=True))
-            try:
-                found = value(*(float(at[s]) for s in order))
-            except (ArithmeticError, ValueError):
-                continue
-            letters = dict(zip(solved, found, strict=True))
-            if all(_has_its_sign(s, v) for s, v in letters.items()):
-                exact = {s: Fraction(v).limit_denominator(10**9) for s, v in letters.items()}
-                yield {s: v for s, v in at.items() if s not in named} | exact
-
     def eliminated(self, kept: Collection[Symbol] = ()) -> dict[Symbol, Expr]:
         """Letters as rational functions of the roots: what makes an identity in both formal.
 
@@ -231,12 +202,6 @@ def _complete(letters: Sequence[Symbol], degree: int) -> Expr:
     if degree < 0:
         return sp.S.Zero
     return sp.Add(*(sp.Mul(*c) for c in combinations_with_replacement(letters, degree)))
-
-
-def _has_its_sign(symbol: Symbol, value: float) -> bool:
-    if not math.isfinite(value) or abs(value) < 1e-6:
-        return False
-    return not (symbol.is_positive and value < 0) and not (symbol.is_negative and value > 0)
 
 
 def _linear(equation: Expr, last: Sequence[Symbol]) -> tuple[Symbol, Expr] | None:

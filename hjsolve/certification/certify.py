@@ -287,11 +287,7 @@ def _by(separation: Separation, given: Parametrisation, ranges: dict[Symbol, Ran
     names = ", ".join(q.name for q, _ in given.coordinates)
     claim = f"{names} as functions of {given.parameter.name} satisfy Hamilton's equations"
     branches = _branches(separation.equations)
-    findings = [
-        finding
-        for branch in branches[:1] + branches[-1:]
-        for finding in parametrised(separation, given, branch, ranges)
-    ]
+    findings = parametrised(separation, given, branches[:1] + branches[-1:], ranges)
     if not findings:
         return [Check(claim, Truth.UNDECIDED, "it rests on a coordinate left implicit")]
     return [_check(claim, findings)]

@@ -9,7 +9,7 @@ the integrals of the rates.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import sympy as sp
 from sympy import Expr, Symbol
@@ -25,10 +25,31 @@ from hjsolve.records import Parametrisation, Separation
 def parametrised(
     separation: Separation,
     given: Parametrisation,
-    branch: Mapping[Symbol, Expr],
+    branches: Sequence[Mapping[Symbol, Expr]],
     ranges: Mapping[Symbol, Range],
 ) -> list[Finding]:
-    """The findings on one branch; empty where H holds a coordinate that is not given."""
+    """The findings on the branches; empty where H holds a coordinate that is not given."""
+    findings: list[Finding] = []
+    seen: set[tuple[Expr, ...]] = set()
+    for branch in branches:
+        found = _on(branch, separation, given, ranges)
+        if found is None:
+            return []
+        algebraic, moving, known = found
+        findings += algebraic
+        if moving not in seen:  # a path that turns holds no sign of a branch
+            seen.add(moving)
+            findings += _along(moving, separation, given, known, ranges)
+    return findings
+
+
+def _on(
+    branch: Mapping[Symbol, Expr],
+    separation: Separation,
+    given: Parametrisation,
+    ranges: Mapping[Symbol, Range],
+) -> tuple[list[Finding], tuple[Expr, ...], dict[Symbol, Expr]] | None:
+    """What is found in the coordinates, what must vanish along the motion, and the motion."""
     h, parameter = separation.hamiltonian, given.parameter
     formulas = (*given.coordinates, *given.momenta)
     pairs = tuple(zip(h.coordinates, h.momenta, strict=True))
@@ -37,7 +58,7 @@ def parametrised(
     rates = {s: f.expression for s, f in given.rates}
     needed = h.expression.free_symbols & set(h.coordinates)
     if h.time not in rates or not needed <= set(known):
-        return []
+        return None
     valid = tuple(dict.fromkeys(v for _, f in formulas for v in f.valid))
     put = boundary_values(valid)
     clock = rates.pop(h.time)
@@ -66,7 +87,7 @@ def parametrised(
     for symbol, law in given.laws:
         rate = dict(given.rates)[symbol].expression.xreplace(known)
         moving.append(sp.diff(law.expression.xreplace(dict(branch)), parameter) - rate)
-    return findings + _along(moving, separation, given, known, ranges)
+    return findings, tuple(moving), known
 
 
 def _named(given: Parametrisation) -> set[Symbol]:
@@ -74,7 +95,7 @@ def _named(given: Parametrisation) -> set[Symbol]:
 
 
 def _along(
-    residues: list[Expr],
+    residues: Sequence[Expr],
     separation: Separation,
     given: Parametrisation,
     known: Mapping[Symbol, Expr],

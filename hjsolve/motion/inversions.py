@@ -210,6 +210,9 @@ def _about(centre: Expr, half: Expr) -> tuple[Expr, ...]:
     return (centre,) if half == 0 else (centre + half, centre - half)
 
 
+ENOUGH = 3
+"""Points at which a path that is put back must give its parameter."""
+
 INVERSIONS = (
     Inversion("linear", "elementary algebra", _linear, (("q/a", "a*tau"),)),
     Inversion(
@@ -322,6 +325,6 @@ def returns(
     found = []
     for side in (sp.S.One, sp.S.NegativeOne):
         ends = sorted((side / 90, side / 25))
-        finding = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions, names=names)
+        finding = refute(residue, {tau: (ends[0], ends[1])}, (), 40, conditions, ENOUGH, names)
         found.append(finding.truth is Truth.UNDECIDED and finding.bound is not None)
     return found[0], found[1]

@@ -28,6 +28,8 @@ from hjsolve.records import Truth
 
 MOST_POLES = 3
 
+ELEMENTARY = (sp.sin, sp.cos, sp.exp, sp.sinh, sp.cosh)
+
 
 @dataclass(frozen=True, slots=True)
 class Smooth:
@@ -66,11 +68,12 @@ def _by_argument(rate: Expr, tau: Symbol) -> list[Expr]:
 
 def _of_group(rate: Expr, tau: Symbol) -> Iterator[Smooth]:
     """One group: first as a sum of products, then by partial fractions."""
-    found = _elementary(sp.expand(rate), tau)
+    functions = [f for f in rate.atoms(sp.Function) if f.has(tau)]
+    plain = all(isinstance(f, ELEMENTARY) for f in functions)
+    found = _elementary(sp.expand(rate), tau) if plain else None
     if found is not None:
         yield Smooth(found)
         return
-    functions = [f for f in rate.atoms(sp.Function) if f.has(tau)]
     arguments = {f.args for f in functions}
     if not functions:
         yield from _fractions(rate, _powers(tau), {}, sp.S.One, tau)
@@ -218,7 +221,6 @@ def _elliptic(u: Expr, m: Expr) -> _Kind:
 
 def _elementary(rate: Expr, tau: Symbol) -> Expr | None:
     """∫ rate dτ for sums of products of polynomials, sin, cos, exp of linear arguments."""
-    allowed = (sp.sin, sp.cos, sp.exp, sp.sinh, sp.cosh)
     for term in Add.make_args(rate):
         for factor in Mul.make_args(term):
             base, exponent = factor.as_base_exp() if not isinstance(factor, sp.exp) else (factor, 1)
@@ -226,16 +228,16 @@ def _elementary(rate: Expr, tau: Symbol) -> Expr | None:
                 continue
             if not (sp.Integer(exponent) == exponent and exponent > 0):
                 return None
-            if base != tau and not isinstance(base, allowed):
+            if base != tau and not isinstance(base, ELEMENTARY):
                 return None
             if base != tau and sp.diff(base.args[0], tau, 2) != 0:
                 return None
     # a frequency that might be zero would make SymPy answer by cases
-    inner = {sp.diff(f.args[0], tau) for f in rate.atoms(*allowed)} - {sp.S.Zero}
+    inner = {sp.diff(f.args[0], tau) for f in rate.atoms(*ELEMENTARY)} - {sp.S.Zero}
     letters = {w: Dummy("w", positive=True) for w in inner if not w.is_nonzero}
     put = {
         f: f.func(letters[w] * tau + f.args[0].subs(tau, 0))
-        for f in rate.atoms(*allowed)
+        for f in rate.atoms(*ELEMENTARY)
         for w in [sp.diff(f.args[0], tau)]
         if w in letters
     }

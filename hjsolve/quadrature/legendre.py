@@ -11,7 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from functools import cached_property
+from functools import cached_property, lru_cache
 from typing import Literal
 
 import sympy as sp
@@ -264,6 +264,7 @@ class Sum:
         self.add(-front * nu**2 * ends / (n.below**2 - nu * n.sine**2))
 
 
+@lru_cache(maxsize=4096)
 def _tidy(e: Expr) -> Expr:
     """A shorter way to write a constant, where one is found cheaply."""
     size = e.count_ops()
