@@ -41,7 +41,7 @@ MOST = 4
 
 
 def by_parameter(
-    separation: Separation, motion: Motion, integrate: Integrate, seconds: float = 12.0
+    separation: Separation, motion: Motion, integrate: Integrate, seconds: float = 9.0
 ) -> Motion:
     """The motion with the coordinates that stayed implicit by a parameter, where one was found.
 
