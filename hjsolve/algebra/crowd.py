@@ -97,7 +97,8 @@ def _named(d: Definition, values: Mapping[Symbol, Any]) -> Floats:
     if d.root_of is None or d.index is None:
         return missing
     coefficients = sp.Poly(d.root_of, d.unknown).all_coeffs()
-    if not all(c.free_symbols <= set(values) and _known(c) for c in coefficients):
+    ready = all(c.free_symbols <= set(values) and _known(c) for c in coefficients)
+    if not ready or d.index >= len(coefficients):
         return missing
     rows = np.array([_value(c, values) for c in coefficients]).T
     fine = np.all(np.isfinite(rows), axis=1) & (rows[:, 0] != 0)

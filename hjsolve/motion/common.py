@@ -36,8 +36,8 @@ from hjsolve.records import (
     Separation,
 )
 
-MOST = 4
-"""Regimes given; those of the first form of each coordinate come first."""
+MOST, COUPLED = 4, 2
+"""Regimes given, of one coordinate and of several coupled ones; bounded motion comes first."""
 
 
 def by_parameter(
@@ -169,7 +169,7 @@ class _Parameter:
                 return
         many = 0
         for chosen in product(*found):
-            if many == MOST:
+            if many == (MOST if len(self.equations) == 1 else COUPLED):
                 return
             if _compatible(chosen) and self._met(chosen, tau):
                 given = self._written(choice, chosen, tau)

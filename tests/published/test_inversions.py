@@ -102,8 +102,16 @@ TIMED = [i for i, row in enumerate(ROWS) if "time" in row["inverts"].values()]
 BY_PARAMETER = [i for i, row in enumerate(ROWS) if "parameter" in row["inverts"].values()]
 
 
-def names(indices: list[int]) -> list[str]:
-    return [ROWS[i]["system"].replace(" ", "-").replace(",", "") for i in indices]
+def cases(indices: list[int]) -> list[Any]:
+    """A case for each row, named, the slow ones marked."""
+    return [
+        pytest.param(
+            i,
+            id=ROWS[i]["system"].replace(" ", "-").replace(",", ""),
+            marks=[pytest.mark.slow] if ROWS[i].get("slow") else [],
+        )
+        for i in indices
+    ]
 
 
 def test_enough_of_them_are_explicit() -> None:
@@ -111,7 +119,7 @@ def test_enough_of_them_are_explicit() -> None:
     assert len(TIMED) >= 27
 
 
-@pytest.mark.parametrize("index", TIMED, ids=names(TIMED))
+@pytest.mark.parametrize("index", cases(TIMED))
 def test_explicit_in_time(index: int) -> None:
     row, solution = ROWS[index], answer(index)
     h = solution.hamiltonian
@@ -160,7 +168,7 @@ def _fits(formula: Formula, at: Any) -> bool:
         return False
 
 
-@pytest.mark.parametrize("index", BY_PARAMETER, ids=names(BY_PARAMETER))
+@pytest.mark.parametrize("index", cases(BY_PARAMETER))
 def test_by_a_parameter(index: int) -> None:
     row, solution = ROWS[index], answer(index)
     h = solution.hamiltonian
