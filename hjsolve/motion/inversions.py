@@ -182,19 +182,24 @@ def _in_jacobi(path: Expr, amplitude: Symbol, u: Expr, m: Expr) -> Expr:
         }
     )
     path = path.xreplace({amplitude: jacobi_am(u, m)})
-    s = next(iter(s.atoms(jacobi_sn)), s)  # without the sign of u
+    return with_delta(path)
+
+
+def with_delta(e: Expr) -> Expr:
+    """√(1 − m sn²(u, m)) as dn(u, m), for m < 1."""
     put = {}
-    for power in path.atoms(sp.Pow):
-        if power.exp != sp.Rational(1, 2) or not power.base.has(s):
+    for power in e.atoms(sp.Pow):
+        if not (power.exp.is_Rational and power.exp.q == 2):
             continue
-        square = Dummy()
-        base = sp.expand(power.base).xreplace({s**2: square})
-        if base.has(s) or sp.diff(base, square, 2) != 0:
-            continue
-        at, rate = base.subs(square, 0), sp.diff(base, square)
-        if sp.cancel(rate + m * at) == 0:
-            put[power] = sp.sqrt(sp.factor_terms(at)) * jacobi_dn(u, m)
-    return path.xreplace(put)
+        for s in power.base.atoms(jacobi_sn):
+            square, (u, m) = Dummy(), s.args
+            base = sp.expand(power.base.xreplace({s**2: square}))
+            if base.has(s) or sp.diff(base, square, 2) != 0:
+                continue
+            at, rate = base.subs(square, 0), sp.diff(base, square)
+            if sp.cancel(rate + m * at) == 0:
+                put[power] = (sp.sqrt(sp.factor_terms(at)) * jacobi_dn(u, m)) ** (2 * power.exp)
+    return e.xreplace(put)
 
 
 def _tangent(x: Expr, amplitude: Symbol) -> Expr:

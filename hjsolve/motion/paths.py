@@ -14,7 +14,7 @@ from hjsolve.algebra.functions import jacobi_cn, jacobi_dn, jacobi_sn
 from hjsolve.algebra.identity import Finding, refute
 from hjsolve.algebra.named import Names
 from hjsolve.algebra.regimes import boundary_values, has_value, inside, regime
-from hjsolve.motion.inversions import invert, returns
+from hjsolve.motion.inversions import invert, returns, with_delta
 from hjsolve.motion.smooth import smooth_antiderivatives
 from hjsolve.records import Antiderivative, Definition, Domain, SeparatedEquation, Truth
 
@@ -180,4 +180,4 @@ def along(e: SeparatedEquation, path: Expr, tau: Symbol, speed: Expr, sign: Expr
     drift = e.drift.xreplace({e.coordinate: path})
     if e.root == 0:
         return drift
-    return drift + sign * speed.xreplace({e.coordinate: path}) * derivative(path, tau)
+    return with_delta(drift + sign * speed.xreplace({e.coordinate: path}) * derivative(path, tau))

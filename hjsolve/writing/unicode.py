@@ -21,6 +21,10 @@ _SIGNS = {"*": "·", "-": "−", "<=": "≤", "sqrt": "√", "infinity": "∞"}
 _TOKEN = re.compile(r"\*\*\d+|\*\*|<=|[A-Za-zα-ωΑ-Ω_][\w']*|\d[\d.]*|.", re.DOTALL)
 
 
+_FUNCTION = re.compile(r"(elliptic|jacobi|carlson|weierstrass|lambert)_\w+")
+"""Names of functions that are no letter with an index."""
+
+
 def unicode_line(text: str) -> str:
     """The infix ``text`` with Unicode signs for what has one."""
     return "".join(_shown(token) for token in _TOKEN.findall(text))
@@ -31,7 +35,7 @@ def _shown(token: str) -> str:
         return token[2:].translate(_SUPERSCRIPTS) if len(token) > 2 else "^"
     if token in _SIGNS:
         return _SIGNS[token]
-    if token[0].isalpha():
+    if token[0].isalpha() and not _FUNCTION.fullmatch(token):
         return _name(token)
     return token
 
