@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import xml.etree.ElementTree as ElementTree
 
-from hypothesis import assume, given, settings
+from hypothesis import assume, example, given, settings
 from hypothesis import strategies as st
 from sympy import Abs, Add, Expr, Function, I, Integer, Mul, Pow, Rational, Symbol, nan, oo, pi, zoo
 
@@ -99,6 +99,7 @@ def read(formula: str) -> Expr:
 
 
 @given(TREES)
+@example(("call", "atan2", ("name", "pi"), ("call", "jacobi_sn", ("name", "pi"), ("name", "pi"))))
 @settings(max_examples=400, deadline=None)
 def test_written_infix_reads_back(tree: Tree) -> None:
     try:
