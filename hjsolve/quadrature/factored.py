@@ -18,9 +18,8 @@ import numpy as np
 from sympy import Expr, Lt, S, Symbol, sqrt
 from sympy.core.relational import Relational
 
-from hjsolve.algebra.balls import Imprecise, OutsideDomain
 from hjsolve.algebra.graph import Graph
-from hjsolve.algebra.named import MARGIN, DefinedBall, RootBall
+from hjsolve.algebra.named import MARGIN, Names, RootBall
 from hjsolve.quadrature import univariate as uv
 from hjsolve.quadrature.dress import Dress
 from hjsolve.quadrature.points import Floats, Sample, floats
@@ -294,15 +293,11 @@ def _resolvent_root(numbers: list[float]) -> float:
 
 def with_names(points: Sample, where: tuple[Definition, ...]) -> Sample:
     """The points with the balls of the names that have a definition; raises Unclear."""
-    graphs = {d.symbol: Graph([d.definition]) for d in where if d.definition is not None}
+    names = Names([d for d in where if d.definition is not None])
     extras = []
     for i in range(points.values.shape[1]):
-        point = points.exact(i)
-        try:
-            for symbol, graph in graphs.items():
-                point[symbol] = ball = DefinedBall(graph, point)
-                float(ball)
-        except (Imprecise, OutsideDomain) as failure:
-            raise Unclear from failure
+        point = names.at(points.exact(i))
+        if point is None:
+            raise Unclear
         extras.append({s: v for s, v in point.items() if s not in points.symbols})
     return Sample(points.symbols, points.values, tuple(extras))
