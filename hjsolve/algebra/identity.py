@@ -110,10 +110,12 @@ def vanish(
     if names is not None and any(e != 0 for e in expressions):
         freed = names.eliminated(_under_roots(expressions))
     for expression in expressions:
-        finding = _formal(expression.xreplace(freed))
-        if finding is None and (positive or _roots(expression)):
-            finding = _formal(unify_roots(expression.xreplace(freed), positive))
-        if finding is None or len(_roots(expression)) > 1:
+        free = expression.xreplace(freed)
+        roots = _roots(free)
+        finding = _formal(free)
+        if finding is None and (positive or roots):
+            finding = _formal(unify_roots(free, positive))
+        if finding is None or len(roots) > 1:
             enough = ENOUGH if finding is None else REFEREES
             seen = refute(expression, ranges or {}, functions, tries, conditions, enough, names)
             if finding is None or seen.truth is Truth.REFUTED:

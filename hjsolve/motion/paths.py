@@ -20,6 +20,9 @@ from hjsolve.records import Antiderivative, Definition, Domain, SeparatedEquatio
 
 Integrate = Callable[[Expr, Symbol, Domain], Antiderivative]
 
+ENOUGH = 20
+"""Points at which a sign must be the same to be taken as that of the regime."""
+
 
 @dataclass(frozen=True, slots=True)
 class Path:
@@ -67,7 +70,7 @@ class Along:
 
     def positive(self, e: Expr) -> bool:
         """Whether an expression is positive at all points of the regime that are met."""
-        found = self._sample(sp.sign(e) - 1)
+        found = self._sample(sp.sign(e) - 1, ENOUGH)
         return found.truth is not Truth.REFUTED and found.bound is not None
 
     def running_on(self, rate: Expr) -> Expr | None:
@@ -88,8 +91,8 @@ class Along:
                     put[power] = sign * inner.base
         return e.xreplace(put)
 
-    def _sample(self, e: Expr) -> Finding:
-        """Balls of an expression at points of the regime where all coordinates are real."""
+    def _sample(self, e: Expr, enough: int) -> Finding:
+        """Balls of e at up to ``enough`` points of the regime where all coordinates are real."""
         names = Names(self.where) if self.where else None
         kept = names.held if names is not None else ()
         signs, conditions = regime([v.xreplace(self.moving) for v in self.valid], kept)
@@ -102,12 +105,13 @@ class Along:
             self.functions,
             60,
             conditions,
-            names=names,
+            enough,
+            names,
         )
 
     def met(self) -> bool:
         """Whether there are constants for which all coordinates are real in the regime."""
-        return self._sample(sp.S.Zero).bound is not None
+        return self._sample(sp.S.Zero, 1).bound is not None
 
 
 @dataclass(frozen=True, slots=True)
