@@ -276,16 +276,21 @@ def _motion(separation: Separation, motion: Motion, ranges: dict[Symbol, Range])
         )
         for q, f, where, part in cases
     ]
-    for given in motion.parametrisations:
-        check = partial(_by, separation, given, ranges)
+    for n, given in enumerate(motion.parametrisations, 1):
+        check = partial(_by, separation, given, n, ranges)
         claims.append((f"the motion by {given.parameter.name}", check, given))
     return claims
 
 
-def _by(separation: Separation, given: Parametrisation, ranges: dict[Symbol, Range]) -> list[Check]:
+def _by(
+    separation: Separation, given: Parametrisation, number: int, ranges: dict[Symbol, Range]
+) -> list[Check]:
     """Hamilton's equations along a motion given by a parameter, on the first and last branch."""
     names = ", ".join(q.name for q, _ in given.coordinates)
-    claim = f"{names} as functions of {given.parameter.name} satisfy Hamilton's equations"
+    claim = (
+        f"{names} as functions of {given.parameter.name} satisfy Hamilton's equations "
+        f"in parametrisation {number}"
+    )
     branches = _branches(separation.equations)
     findings = parametrised(separation, given, branches[:1] + branches[-1:], ranges)
     if not findings:
